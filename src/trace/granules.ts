@@ -47,7 +47,7 @@ export class GranuleWalk {
 
   fill(address: Float64Array, bytes: Int32Array, from: number, room: number): number {
     const { random, ranks, scatter, base, granule, items } = this;
-    const count = room < this.left ? room : this.left;
+    const count = Math.min(room, this.left);
     const end = from + count;
     this.left -= count;
     switch ((this.pattern as Pattern).name) {

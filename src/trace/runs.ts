@@ -83,7 +83,7 @@ export class RunWalk {
         runLeft = pattern.name === 'strided' ? this.element : pattern.width;
         step = toBoundary(at, request);
       }
-      let length = step < runLeft ? step : runLeft;
+      let length = Math.min(step, runLeft);
       if (length > left) length = left;
       address[i] = at;
       bytes[i] = length;
@@ -106,7 +106,7 @@ export class RunWalk {
     let { left, step, address: at } = this;
     let i = from;
     for (; i < end && left > 0; i++) {
-      const length = step < left ? step : left;
+      const length = Math.min(step, left);
       address[i] = at;
       bytes[i] = length;
       at += length;

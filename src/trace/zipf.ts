@@ -52,5 +52,5 @@ function inverseArea(a: number, s: number): number {
   const t = (1 - s) * a;
   if (t > -1e-9 && t < 1e-9) return Math.exp(a * (1 - t / 2));
   // rounding can push t a hair past -1, where the logarithm ends
-  return Math.exp((Math.log1p(t < -1 ? -1 : t) / t) * a);
+  return Math.exp((Math.log1p(Math.max(t, -1)) / t) * a);
 }
