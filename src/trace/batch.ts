@@ -13,7 +13,7 @@ export interface AccessBatch {
   readonly die: Int32Array | null; // compute die index, null or -1: the die that owns the address
   readonly engine: Int32Array | null; // engine within the die, null or -1: dealt in turn
   readonly kernel: Int32Array; // index into AccessTrace.kernelNames
-  readonly tile: Int32Array | null; // rows of one engine that follow each other with one tile number are one tile
+  readonly tile: Int32Array | null; // rows of one engine that follow each other with one tile number are one tile; -1: a tile of its own
   readonly flops: Float64Array | null; // work done once the row's tile has been loaded
   readonly after: Int32Array | null; // rows back on this engine that must have returned first; 0: none
 }

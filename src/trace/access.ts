@@ -1,0 +1,195 @@
+/** Access-trace rows to batches of columns: checks every cell, fills one batch again and again, counts what it skips. */
+import { InputError } from '../errors.js';
+import { type AccessBatch, type DieGeometry, READ, WRITE } from './batch.js';
+import { Cells } from './cells.js';
+import type { Header } from './header.js';
+
+/** Rows of a batch. */
+export const BATCH_ROWS = 4096;
+/** Longest access, bytes. */
+export const LONGEST_ACCESS = 2 ** 31;
+/** How many rows back a dependency may reach. */
+export const FARTHEST_AFTER = 1024;
+/** Names of kernels are held for the whole run, so there is an end to them. */
+export const MOST_KERNELS = 65536;
+
+const OPS: ReadonlyMap<string, number> = new Map([
+  ['r', READ],
+  ['read', READ],
+  ['w', WRITE],
+  ['write', WRITE],
+]);
+const LATEST_PS = 2 ** 53 - 1;
+
+/** What the cells are checked against; empty and infinite where the package is not known. */
+export interface AccessLimits {
+  readonly dieNames: readonly string[];
+  readonly geometry: readonly DieGeometry[];
+  readonly capacity: number; // bytes; an access must end at or before it
+  readonly cyclePs: number; // period of the clock that column `cycle` counts, ps; 0: not known
+}
+
+/** Parses rows into one batch. `add` takes a row or throws InputError and leaves the batch as it was. */
+export class AccessRows {
+  readonly batch: AccessBatch;
+  readonly kernelNames: string[] = [];
+
+  private readonly cells: Cells;
+  private readonly kernelIndex = new Map<string, number>();
+  private readonly at; // position of each column, -1 where the trace has none
+  private readonly timeScale: number; // ps of one unit of the time column
+  private lastTime = 0;
+  private lastTimeLine = 0;
+
+  constructor(
+    file: string,
+    header: Header,
+    private readonly limits: AccessLimits,
+  ) {
+    this.cells = new Cells(file, header);
+    const position = (name: string) => this.cells.position(name);
+    const timeName = ['time_ps', 'time_ns', 'time_us', 'cycle'].find((name) => position(name) >= 0) ?? '';
+    if (timeName === 'cycle' && !(limits.cyclePs > 0)) {
+      throw new InputError({
+        where: { file, line: header.line, path: 'cycle' },
+        found: "a column 'cycle', and no clock it counts",
+        expected: 'the period of that clock',
+        hint: 'give the clock, or convert the column to time_ps, time_ns or time_us',
+      });
+    }
+    this.timeScale = { time_ps: 1, time_ns: 1e3, time_us: 1e6, cycle: limits.cyclePs }[timeName] ?? 1;
+    this.at = {
+      op: position('op'),
+      address: position('address'),
+      bytes: position('bytes'),
+      time: timeName === '' ? -1 : position(timeName),
+      die: position('die'),
+      engine: position('engine'),
+      kernel: position('kernel'),
+      tile: position('tile'),
+      flops: position('flops'),
+      after: position('after'),
+    };
+    const ints = (there: number) => (there < 0 ? null : new Int32Array(BATCH_ROWS));
+    const doubles = (there: number) => (there < 0 ? null : new Float64Array(BATCH_ROWS));
+    this.batch = {
+      count: 0,
+      op: new Uint8Array(BATCH_ROWS),
+      address: new Float64Array(BATCH_ROWS),
+      bytes: new Float64Array(BATCH_ROWS),
+      timePs: doubles(this.at.time),
+      die: ints(this.at.die),
+      engine: ints(this.at.engine),
+      kernel: new Int32Array(BATCH_ROWS),
+      tile: ints(this.at.tile),
+      flops: doubles(this.at.flops),
+      after: ints(this.at.after),
+    };
+  }
+
+  add(row: readonly string[], line: number): void {
+    const { cells, at, batch, limits } = this;
+    cells.enter(row, line);
+    const op = OPS.get(cells.text(at.op).toLowerCase());
+    if (op === undefined) throw cells.fault(at.op, 'R, W, read or write', 'one access a row');
+    const address = cells.address(at.address);
+    const bytes = cells.whole(at.bytes, 1, LONGEST_ACCESS, 'the bytes of one access');
+    const owner = this.owner(address, bytes);
+    const timePs = at.time < 0 ? 0 : this.time();
+    // optional cells may be empty: a column that is there says nothing about every row
+    const die = this.empty(at.die) ? -1 : cells.die(at.die, limits.dieNames, this.dieCount());
+    const engine = this.empty(at.engine) ? -1 : this.engine(die >= 0 ? die : owner);
+    const tile = this.empty(at.tile) ? -1 : cells.whole(at.tile, 0, 2 ** 31 - 1, 'a tile number');
+    const flops = this.empty(at.flops) ? 0 : cells.decimal(at.flops, 'floating-point operations');
+    const after = this.empty(at.after) ? 0 : cells.whole(at.after, 0, FARTHEST_AFTER, 'rows back on this engine');
+    const kernel = this.kernel();
+
+    // nothing below can fail
+    const i = batch.count++;
+    batch.op[i] = op;
+    batch.address[i] = address;
+    batch.bytes[i] = bytes;
+    batch.kernel[i] = kernel;
+    if (batch.timePs !== null) {
+      batch.timePs[i] = timePs;
+      this.lastTime = timePs;
+      this.lastTimeLine = Math.abs(line);
+    }
+    if (batch.die !== null) batch.die[i] = die;
+    if (batch.engine !== null) batch.engine[i] = engine;
+    if (batch.tile !== null) batch.tile[i] = tile;
+    if (batch.flops !== null) batch.flops[i] = flops;
+    if (batch.after !== null) batch.after[i] = after;
+  }
+
+  private empty(position: number): boolean {
+    return position < 0 || this.cells.text(position) === '';
+  }
+
+  private dieCount(): number {
+    const { geometry, dieNames } = this.limits;
+    return geometry.length || dieNames.length || 1024;
+  }
+
+  /** The die whose memory an access falls in, -1 when that is not known. Checks that it falls in one and not beyond the last. */
+  private owner(address: number, bytes: number): number {
+    const { capacity, geometry } = this.limits;
+    const end = address + bytes;
+    if (end > capacity) {
+      throw this.cells.fault(
+        this.at.address,
+        `an access that ends at or below the capacity of the package, ${capacity} bytes`,
+        'use a package with more memory, or map the addresses of the trace into it',
+        `'${this.cells.text(this.at.address)}', ${end - capacity} bytes beyond the end of memory`,
+      );
+    }
+    for (let die = 0; die < geometry.length; die++) {
+      const { base, capacity: size } = geometry[die];
+      if (address < base || address >= base + size) continue;
+      if (end <= base + size) return die;
+      throw this.cells.fault(
+        this.at.address,
+        'an access inside the memory of one die',
+        `split it at address ${base + size}, where the memory of the next die begins`,
+      );
+    }
+    return -1;
+  }
+
+  private engine(die: number): number {
+    const engines = this.limits.geometry[die]?.engines ?? 2 ** 20;
+    return this.cells.whole(this.at.engine, 0, engines - 1, 'an engine of the die');
+  }
+
+  private time(): number {
+    const { cells, at } = this;
+    const timePs = Math.round(cells.decimal(at.time, 'a time') * this.timeScale);
+    if (timePs > LATEST_PS)
+      throw cells.fault(at.time, 'a time below 9000 s', 'times count from the start of the trace');
+    if (timePs < this.lastTime) {
+      throw cells.fault(
+        at.time,
+        `a time no earlier than that of line ${this.lastTimeLine}, ${this.lastTime} ps`,
+        'sort the trace by time',
+        `'${cells.text(at.time)}': time goes backwards by ${this.lastTime - timePs} ps`,
+      );
+    }
+    return timePs;
+  }
+
+  /** Number of the row's kernel; rows of a trace without that column, or with an empty cell, are of one nameless kernel. */
+  private kernel(): number {
+    const name = this.cells.text(this.at.kernel) || (this.at.kernel < 0 ? 'trace' : '(unnamed)');
+    const known = this.kernelIndex.get(name);
+    if (known !== undefined) return known;
+    if (this.kernelNames.length === MOST_KERNELS) {
+      throw this.cells.fault(
+        this.at.kernel,
+        `at most ${MOST_KERNELS} different kernels in a trace`,
+        "number launches in column 'tile', not in the kernel's name",
+      );
+    }
+    this.kernelIndex.set(name, this.kernelNames.length);
+    return this.kernelNames.push(name) - 1;
+  }
+}
