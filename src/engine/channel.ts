@@ -17,10 +17,10 @@ import { countMoved } from './traffic.js';
  */
 
 const FAR = 0x7fffffff; // later than any time
-const UNSET = -0x7fffffff; // a time not reached yet; also long before any time
+const UNSET = -0x3fffffff; // a time not reached yet; long before any time, and still safe to take a time from
 
 const CAPACITY = 1 << 25; // Int32 words; the pages are not touched until used
-const M = new Int32Array(CAPACITY);
+const M = new Int32Array(CAPACITY).subarray(12); // large buffers start 16 bytes into a page; this puts records on cache lines
 
 // pseudo-channel record; candidate kinds are 1 column, 2 PRE, 3 ACT
 const PR_WORDS = 1024;
@@ -227,7 +227,7 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
   K[BANK_BASE] = PR_WORDS * (system.total + 1);
   K[SLOT_BASE] = K[BANK_BASE] + BR_WORDS * K[BANKS] * system.total;
   const used = K[SLOT_BASE] + SLOT_WORDS * K[DEPTH] * system.total;
-  if (system.total > MAX_PSEUDO || used > CAPACITY || K[DEPTH] * system.total > slotNumber.length || K[BANKS] > 64 || K[GROUPS] > 32 || K[SIDS] > 4) {
+  if (system.total > MAX_PSEUDO || used > M.length || K[DEPTH] * system.total > slotNumber.length || K[BANKS] > 64 || K[GROUPS] > 32 || K[SIDS] > 4) {
     throw new RangeError(
       `the package is larger than the engine's tables: at most ${MAX_PSEUDO} pseudo-channels of 64 banks, 32 bank groups and 4 stack IDs, and ${slotNumber.length} queue entries in all`,
     );
@@ -687,30 +687,36 @@ function choosePrecharge(pr: number, floor: number): void {
   M[pr + DIRTY + 2] = 0;
 }
 
-/** Caches the earliest ACT at or after `floor`; the oldest entry's among those of one half clock. */
+/**
+ * Caches the earliest ACT at or after `floor`; the oldest entry's among those of one half clock. Under random traffic this scan
+ * is the longest of all and its comparisons are coin tosses, so it takes the minimum of one number made of both without a
+ * branch: how late, then how young (younger than 16,383 requests counts as that).
+ */
 function chooseActivate(pr: number, floor: number): void {
-  let best = FAR;
-  let bestAge = FAR;
-  let bestEntry = 0;
   const groups = pr + ACT_READY_G;
   const from = pr + LIST + (3 << LIST_SHIFT);
+  const oldest = M[M[pr + OLD_HEAD + M[pr + MODE]] + SLOT_AGE];
+  let best = FAR;
+  let bestEntry = from;
   for (let entry = from, end = from + 4 * M[pr + N + 3]; entry < end; entry += 4) {
-    let e = M[entry + E_READY];
-    const g = M[groups + M[entry + E_GROUP]];
-    e = g > e ? g : e;
-    e = floor > e ? floor : e;
-    const age = M[entry + E_AGE];
-    if (e < best || (e === best && age < bestAge)) {
-      best = e;
-      bestAge = age;
-      bestEntry = entry;
-    }
+    let late = M[entry + E_READY] - floor;
+    const window = M[groups + M[entry + E_GROUP]] - late - floor;
+    late += window & ~(window >> 31);
+    late &= ~(late >> 31);
+    let young = M[entry + E_AGE] - oldest;
+    young = (young | ((MOST_YOUNG - young) >> 31)) & MOST_YOUNG;
+    const difference = ((late << YOUNG_BITS) | young) - best;
+    const better = difference >> 31;
+    best += difference & better;
+    bestEntry ^= (bestEntry ^ entry) & better;
   }
-  M[pr + TIME + 3] = best;
+  M[pr + TIME + 3] = floor + (best >> YOUNG_BITS);
   M[pr + BEST + 3] = bestEntry;
-  M[pr + BEST_AGE + 3] = bestAge;
+  M[pr + BEST_AGE + 3] = M[bestEntry + E_AGE];
   M[pr + DIRTY + 3] = 0;
 }
+const YOUNG_BITS = 14;
+const MOST_YOUNG = (1 << YOUNG_BITS) - 1;
 
 // ---- issue -----------------------------------------------------------------------------------------------------------------
 
@@ -1338,7 +1344,7 @@ export function lastBurstEndHalf(): number {
 
 /** Moves the ORIGIN[EPOCH] so that times near `half` (absolute half clocks, nothing earlier is still to come) fit in 32 bits. */
 export function keepInRange(half: number): void {
-  while (half - ORIGIN[EPOCH] > 1 << 30) {
+  while (half - ORIGIN[EPOCH] > 3 << 28) {
     const shift = 1 << 29;
     for (let channel = 0; channel < K[CHANNELS]; channel++) runChannel(channel, shift, true);
     for (let channel = 0; channel < K[CHANNELS]; channel++) {
