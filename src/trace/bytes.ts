@@ -2,16 +2,25 @@
 import type { Hash } from 'node:crypto';
 import { pipeline } from 'node:stream';
 import { createGunzip } from 'node:zlib';
-import { InputError } from '../errors.js';
+import { InputError, SystemError } from '../errors.js';
 
 export const CHUNK = 16384; // bytes read or un-gzipped at a time: fast-csv is quickest on small pieces
 
-/** Feeds a hash with the bytes that pass. */
-export async function* hashed(source: AsyncIterable<Buffer>, hash: Hash): AsyncGenerator<Buffer> {
-  for await (const chunk of source) {
-    hash.update(chunk);
-    yield chunk;
+/** Feeds a hash with the bytes that pass. Throws SystemError when the source cannot be read on. */
+export async function* hashed(source: AsyncIterable<Buffer>, file: string, hash: Hash): AsyncGenerator<Buffer> {
+  try {
+    for await (const chunk of source) {
+      hash.update(chunk);
+      yield chunk;
+    }
+  } catch (error) {
+    throw unreadable(file, error);
   }
+}
+
+/** The error for a file the system will not let us read. */
+export function unreadable(file: string, error: unknown): SystemError {
+  return new SystemError(`${file}: cannot be read: ${(error as Error).message}`, { cause: error });
 }
 
 /** Looks at the first two bytes, which in gzip are 1f 8b (RFC 1952), and un-gzips or not. */
@@ -28,6 +37,7 @@ export async function* decode(
   }
   const zipped = head.length >= 2 && head[0] === 0x1f && head[1] === 0x8b;
   if (head.length > 0 && zipped !== (form === 'gzip') && form !== 'by content') {
+    await source.return(undefined);
     throw new InputError({
       where: { file },
       found: zipped ? 'gzip data in a file not named .gz' : 'a file named .gz that is not gzip',
@@ -57,7 +67,12 @@ export async function* decode(
   }
 }
 
+/** Puts back what was taken to look at; closes the source when it is left early. */
 async function* withHead(head: Buffer, source: AsyncGenerator<Buffer>): AsyncGenerator<Buffer> {
-  if (head.length > 0) yield head;
-  yield* source;
+  try {
+    if (head.length > 0) yield head;
+    yield* source;
+  } finally {
+    await source.return(undefined);
+  }
 }

@@ -11,6 +11,7 @@ import { noRows, type Tolerance } from './tolerance.js';
 export const DEFAULT_TILE = 65536;
 /** Largest size of one side of a kernel, bytes: the address space. */
 const LARGEST_SIDE = 2 ** 52;
+const MOST_FLOPS = 1e30;
 const MOST_LAUNCHES = 2 ** 31 - 1;
 const MOST_ESTIMATE_US = 9e9; // 2^53 ps
 
@@ -140,7 +141,13 @@ class KernelRows {
   private flops(): number {
     const text = this.cells.text(this.at.flops);
     if (text === '') return 0;
-    return parseFlops(text, this.cells.where(this.at.flops));
+    const flops = parseFlops(text, this.cells.where(this.at.flops));
+    if (flops >= 0 && flops <= MOST_FLOPS) return flops;
+    throw this.cells.fault(
+      this.at.flops,
+      'floating-point operations of one launch, from 0 up',
+      'for example 2.5 GFLOP or 2.5e9',
+    );
   }
 
   /** The pattern of a side; of a side that moves nothing it is checked, and there is none. */

@@ -7,8 +7,8 @@ import { createReadStream } from 'node:fs';
 import { stat } from 'node:fs/promises';
 import { InputError } from '../errors.js';
 import { AccessRows, BATCH_ROWS } from './access.js';
-import type { AccessBatch, DieGeometry, Trace, TraceFacts } from './batch.js';
-import { CHUNK, decode, hashed } from './bytes.js';
+import type { AccessBatch, AccessTrace, DieGeometry, Trace, TraceFacts } from './batch.js';
+import { CHUNK, decode, hashed, unreadable } from './bytes.js';
 import { type Header, readHeader } from './header.js';
 import { readKernels } from './kernels.js';
 import { type RowBlock, readRows } from './rows.js';
@@ -32,26 +32,36 @@ export interface TraceOptions {
 /**
  * Opens an access trace or a kernel trace (`.csv`, `.csv.gz`, or '-' for `options.input`). A kernel trace is read to its end; of
  * an access trace the first batch is read, so that what is wrong near its top is said here, and `batches()`, which may be called
- * once, reads on. Throws InputError for whatever the user can mend; failures of the system come through as they are.
+ * once, reads on. Throws InputError for whatever the user can mend and SystemError for what
+ * cannot be read.
  */
 export async function openTrace(file: string, options: TraceOptions = {}): Promise<Trace> {
   const hash = createHash('sha256');
   const blocks = readRows(await openBytes(file, options, hash), file);
-  const tolerance = new Tolerance(options.skipBadRows ?? 0);
-  const { header, rest } = await firstRow(blocks, file);
-  const rows = withBlock(rest, blocks);
-  const geometry = options.geometry ?? [];
-  if (header.kind === 'kernel') {
-    return readKernels(file, header, rows, tolerance, options.dieNames ?? [], geometry, () => hash.digest('hex'));
+  try {
+    const tolerance = new Tolerance(options.skipBadRows ?? 0);
+    const { header, rest } = await firstRow(blocks, file);
+    const rows = withBlock(rest, blocks);
+    if (header.kind === 'access') return await openAccess(file, header, rows, tolerance, options, hash);
+    const { dieNames = [], geometry = [] } = options;
+    return await readKernels(file, header, rows, tolerance, dieNames, geometry, () => hash.digest('hex'));
+  } catch (error) {
+    await blocks.return(undefined); // closes the file
+    throw error;
   }
+}
 
+async function openAccess(
+  file: string,
+  header: Header,
+  rows: AsyncIterable<RowBlock>,
+  tolerance: Tolerance,
+  options: TraceOptions,
+  hash: Hash,
+): Promise<AccessTrace> {
+  const { dieNames = [], geometry = [], cyclePs = 0 } = options;
   const end = geometry.length > 0 ? Math.max(...geometry.map((die) => die.base + die.capacity)) : 2 ** 52;
-  const access = new AccessRows(file, header, {
-    dieNames: options.dieNames ?? [],
-    geometry,
-    capacity: options.capacity ?? end,
-    cyclePs: options.cyclePs ?? 0,
-  });
+  const access = new AccessRows(file, header, { dieNames, geometry, capacity: options.capacity ?? end, cyclePs });
   const facts = { rows: 0, skippedRows: 0, hash: '' };
   const reading = readBatches(file, access, rows, tolerance, facts, hash);
   const first = await reading.next();
@@ -146,14 +156,15 @@ async function openBytes(file: string, options: TraceOptions, hash: Hash): Promi
         hint: 'name a file',
       });
     }
-    return decode(hashed(options.input, hash), file, 'by content');
+    return decode(hashed(options.input, file, hash), file, 'by content');
   }
   let found: string | null = null;
   try {
     if ((await stat(file)).isDirectory()) found = 'a directory';
   } catch (error) {
     const code = (error as NodeJS.ErrnoException).code ?? '';
-    if (!['ENOENT', 'ENOTDIR', 'ENAMETOOLONG', 'ELOOP', 'ERR_INVALID_ARG_VALUE'].includes(code)) throw error;
+    if (!['ENOENT', 'ENOTDIR', 'ENAMETOOLONG', 'ELOOP', 'ERR_INVALID_ARG_VALUE'].includes(code))
+      throw unreadable(file, error);
     found = 'no such file';
   }
   if (found !== null) {
@@ -164,6 +175,6 @@ async function openBytes(file: string, options: TraceOptions, hash: Hash): Promi
       hint: found === 'a directory' ? 'name a file in it' : 'check the path',
     });
   }
-  const raw = hashed(createReadStream(file, { highWaterMark: CHUNK }), hash);
+  const raw = hashed(createReadStream(file, { highWaterMark: CHUNK }), file, hash);
   return decode(raw, file, file.endsWith('.gz') ? 'gzip' : 'plain');
 }

@@ -1,10 +1,10 @@
 /** Broken traces, and what is said about each: where, what was found, what would do. Nothing hangs, nothing grows. */
-import { mkdirSync, mkdtempSync, rmSync, writeFileSync } from 'node:fs';
+import { existsSync, mkdirSync, mkdtempSync, readdirSync, readlinkSync, rmSync, writeFileSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { gzipSync } from 'node:zlib';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import { InputError } from '../../src/errors.js';
+import { InputError, SystemError } from '../../src/errors.js';
 import { openTrace, type TraceOptions } from '../../src/trace/index.js';
 
 let folder = '';
@@ -71,6 +71,16 @@ describe('files that are no trace', () => {
 
   it("'-' without standard input", async () => {
     expect((await refusal('-')).found).toContain('no standard input');
+  });
+
+  it('that break off while being read are no fault of the user', async () => {
+    async function* input() {
+      yield Buffer.from('op,address,bytes\nR,0,1\n');
+      throw new Error('EIO: i/o error, read');
+    }
+    const reading = openTrace('-', { input: input() });
+    await expect(reading).rejects.toThrow(SystemError);
+    await expect(reading).rejects.toThrow('-: cannot be read: EIO: i/o error, read');
   });
 
   it('with NUL bytes', async () => {
@@ -169,6 +179,24 @@ describe('headers', () => {
     expect(error.found).toEqual(found);
     expect(error.hint).toBe(hint);
     expect(error.where.line).toBe(2);
+  });
+
+  it.skipIf(!existsSync('/proc/self/fd'))('leave no file open behind them', async () => {
+    for (const header of ['a,b,c', 'op,address,bytes,cycle', 'op,address,bytes\nX,1,1']) {
+      await refusalOf(`${header}\n${'R,0,1,1\n'.repeat(100000)}`, {}, 'left.csv');
+      const zipped = gzipSync(`${header}\n${'R,0,1,1\n'.repeat(100000)}`);
+      await refusalOf(zipped, {}, 'left.csv.gz');
+      await refusalOf(zipped, {}, 'left.csv');
+    }
+    await new Promise((resolve) => setTimeout(resolve, 50));
+    const open = readdirSync('/proc/self/fd').filter((fd) => {
+      try {
+        return readlinkSync(`/proc/self/fd/${fd}`).includes('left.csv');
+      } catch {
+        return false; // closed since
+      }
+    });
+    expect(open).toEqual([]);
   });
 
   it('a cycle column without a clock', async () => {
@@ -278,6 +306,8 @@ describe('rows of a kernel trace', () => {
     ['a,s,,0,-1 KiB,0,,,,,,', 'read'],
     ['a,s,bf16,lots,1 KiB,0,,,,,,', 'flops'],
     ['a,s,bf16,-5,1 KiB,0,,,,,,', 'flops'],
+    ['a,s,bf16,-5 GFLOP,1 KiB,0,,,,,,', 'flops'],
+    ['a,s,bf16,1e300,1 KiB,0,,,,,,', 'flops'],
     ['a,s,,0,1 KiB,0,,,4,,,', 'tile'],
   ])('%s, whose quantity has no fitting unit', async (row, path) => {
     expect((await refusalOf(`${COLUMNS}\n${row}\n`)).where).toMatchObject({ line: 2, path });
