@@ -34,7 +34,7 @@ function parse(text: string, units: Units, where: Where, what: string): number {
   const expected = `${what} with a unit (${names.join(', ')})`;
   const match = QUANTITY.exec(text.trim());
   if (match === null) throw new InputError({ where, found: `'${text}'`, expected });
-  const factor = units[match[2]];
+  const factor = Object.hasOwn(units, match[2]) ? units[match[2]] : undefined;
   if (factor === undefined) {
     const like = nearest(match[2], names);
     throw new InputError({
@@ -88,7 +88,9 @@ export function parseSeparation(text: string, where: Where): Separation {
   }
   const clocks = /^(\d+)\s*ck$/.exec(text.trim());
   if (clocks !== null) return { ck: Number(clocks[1]), ps: 0 };
-  return { ck: 0, ps: parse(text, { ...TIME, ck: Number.NaN }, where, 'a time or a whole number of clocks') };
+  const ps = parse(text, { ...TIME, ck: Number.NaN }, where, 'a time or a whole number of clocks');
+  if (Number.isNaN(ps)) throw new InputError({ where, found: `'${text}'`, expected: 'a whole number of clocks, for example 4 ck' });
+  return { ck: 0, ps };
 }
 
 // ---- for people: three or four significant digits ----------------------------------------------------------------------------

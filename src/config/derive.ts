@@ -1,0 +1,73 @@
+import { domains, stackBytes } from './domains.js';
+import type { Link, MemoryGroup, Package, TimingName } from './package.js';
+
+/** Bandwidth ceilings, bytes a second, of one stack and its link. */
+export interface Ceilings {
+  readonly peak: number; // of the DRAM data buses
+  readonly refreshDerated: number; // peak less the time all-bank refresh takes; per-bank refresh leaves other banks working
+  readonly linkRead: number; // read data over the up link: payload rate less response headers of full requests
+  readonly linkWrite: number; // write data over the down link, likewise
+}
+
+/** Share of the time that all-bank refresh takes: tRFCab / tREFI; 0 for per-bank refresh and none. */
+export function refreshLoss({ refresh, timings }: MemoryGroup): number {
+  return refresh.mode === 'all-bank' ? timings.tRFCab.ck / timings.tREFI.ck : 0;
+}
+
+export function ceilings(pkg: Package, link: Link): Ceilings {
+  const [memory] = pkg.memory;
+  const request = requestBytes(pkg, link.die);
+  const share = (header: number): number => request / (request + header);
+  return {
+    peak: memory.peakBytesPerS,
+    refreshDerated: memory.peakBytesPerS * (1 - refreshLoss(memory)),
+    linkRead: link.payloadBytesPerS * share(link.responseHeaderBytes),
+    linkWrite: link.payloadBytesPerS * share(link.requestHeaderBytes),
+  };
+}
+
+/** The longest request that reaches a controller: what stays in one row of one granule. */
+export function requestBytes(pkg: Package, die: number): number {
+  const { organisation: o } = pkg.memory[0];
+  let columns = 0;
+  for (const { name, bits } of pkg.addressMap.fields) {
+    if (name !== 'column') break;
+    columns += bits;
+  }
+  let piece = o.atom_bytes * 2 ** columns;
+  while (pkg.addressMap.granuleBytes % piece !== 0) piece /= 2;
+  return Math.min(piece, pkg.dies[die].requestBytes);
+}
+
+/** Unloaded latency of a one-atom read, ps by stage, for each state the row may be found in. */
+export interface UnloadedLatency {
+  readonly down_link_transit: number;
+  readonly bank_preparation: { readonly hit: number; readonly closed: number; readonly conflict: number };
+  readonly data_transfer: number;
+  readonly up_link_transit: number;
+  readonly total: { readonly hit: number; readonly closed: number; readonly conflict: number };
+}
+
+export function unloadedLatency(pkg: Package, link: Link): UnloadedLatency {
+  const [memory] = pkg.memory;
+  const ps = (name: TimingName): number => memory.timings[name].ck * memory.clockPs;
+  const down = Math.ceil(link.flitPs) + link.latencyPs + memory.baseDie.ingressPs;
+  const up = memory.baseDie.egressPs + Math.ceil(link.flitPs) + link.latencyPs;
+  const data = Math.ceil(ps('RL') + memory.organisation.burst_ck * memory.clockPs);
+  const preparation = { hit: 0, closed: Math.ceil(ps('tRCDRD')), conflict: Math.ceil(ps('tRP') + ps('tRCDRD')) };
+  const total = (state: number): number => down + state + data + up;
+  return {
+    down_link_transit: down,
+    bank_preparation: preparation,
+    data_transfer: data,
+    up_link_transit: up,
+    total: { hit: total(preparation.hit), closed: total(preparation.closed), conflict: total(preparation.conflict) },
+  };
+}
+
+/** Bytes of the whole package. */
+export function capacityBytes(pkg: Package): number {
+  return domains(pkg).reduce((sum, domain) => sum + domain.capacity, 0);
+}
+
+export { stackBytes };

@@ -1,0 +1,183 @@
+import { createHash } from 'node:crypto';
+import { InputError, nearest, type Where } from '../errors.js';
+import { parseBytes, parseFlopRate, parseFrequency, parseLength, parseTemperature, parseTime, parseTransfers } from '../units.js';
+import { resolveMap } from './resolve-map.js';
+import { resolveMemory } from './resolve-memory.js';
+import type { ComputeDie, Link, MemoryGroup, Package } from './package.js';
+import type { PackageFile } from './schema.js';
+import { locate, type Path, type Tree } from './tree.js';
+
+/** Where each value of a document stands, for the errors of everything that resolves it. */
+export type Place = (path: Path) => Where;
+
+/** Turns a valid document into a Package: units to numbers, names to indices, presets filled in. */
+export function resolve(file: PackageFile, tree: Tree, fileName: string): Package {
+  const place: Place = (path) => locate(tree, path);
+  const memory = file.memory.map((group, i) => resolveMemory(group, ['memory', i], place));
+  const dies = file.compute.map((die, i) => resolveDie(die, ['compute', i], place));
+  distinct(file.compute.map((die) => die.name), 'compute', place);
+  const links = resolveLinks(file.links, file, memory, place);
+  const resolved = {
+    name: file.name,
+    caution: file.caution,
+    dies,
+    memory,
+    links,
+    addressMap: resolveMap(file.address_map, memory[0], place),
+  };
+  const hash = createHash('sha256').update(JSON.stringify(resolved)).digest('hex');
+  return freeze({ ...resolved, file: fileName, hash });
+}
+
+function resolveDie(die: PackageFile['compute'][number], path: Path, place: Place): ComputeDie {
+  const at = (key: string): Where => place([...path, key]);
+  return {
+    name: die.name,
+    clockPs: 1e12 / positive(parseFrequency(die.clock, at('clock')), die.clock, at('clock')),
+    engines: die.engines,
+    window: die.window,
+    issuePerClock: die.issue_per_clock,
+    buffering: die.buffering,
+    requestBytes: whole(positive(parseBytes(die.request, at('request')), die.request, at('request')), at('request'), 'bytes'),
+    peakFlops: Object.fromEntries(
+      Object.entries(die.peak).map(([format, rate]) => [
+        format,
+        positive(parseFlopRate(rate, place([...path, 'peak', format])), rate, place([...path, 'peak', format])),
+      ]),
+    ),
+    edgeMm: die.edge === undefined ? 0 : positive(parseLength(die.edge, at('edge')), die.edge, at('edge')),
+  };
+}
+
+/** Expands `hbm.0-2` to one link a stack and sorts by stack; every stack must end up with exactly one. */
+function resolveLinks(links: PackageFile['links'], file: PackageFile, memory: readonly MemoryGroup[], place: Place): Link[] {
+  const [group] = memory;
+  const byStack = new Map<number, Link>();
+  distinct(links.map((link) => link.name), 'links', place);
+  links.forEach((link, i) => {
+    const path = ['links', i];
+    const die = file.compute.findIndex((candidate) => candidate.name === link.from);
+    if (die < 0) throw unknownName(link.from, file.compute.map((c) => c.name), 'a compute die', place([...path, 'from']));
+    const stacks = stacksOf(link.to, group, place([...path, 'to']));
+    for (const stack of stacks) {
+      const taken = byStack.get(stack);
+      if (taken !== undefined) {
+        throw new InputError({
+          where: place([...path, 'to']),
+          found: `a second link to stack ${group.name}.${stack}, which link '${taken.name}' already reaches`,
+          expected: 'exactly one link a stack',
+        });
+      }
+      const name = stacks.length === 1 ? link.name : `${link.name}.${stack - stacks[0]}`;
+      byStack.set(stack, resolveLink(link, name, die, stack, path, place));
+    }
+  });
+  const missing = Array.from({ length: group.organisation.stacks }, (_, s) => s).filter((s) => !byStack.has(s));
+  if (missing.length > 0) {
+    throw new InputError({
+      where: place(['links']),
+      found: `no link to stack ${missing.map((s) => `${group.name}.${s}`).join(', ')}`,
+      expected: 'exactly one link a stack',
+    });
+  }
+  file.compute.forEach((die, d) => {
+    if ([...byStack.values()].some((link) => link.die === d)) return;
+    throw new InputError({
+      where: place(['compute', d, 'name']),
+      found: `compute die '${die.name}' without a link to any stack`,
+      expected: 'at least one link from each compute die; routes through other dies are not modelled yet',
+    });
+  });
+  return [...byStack.values()].sort((a, b) => a.stack - b.stack);
+}
+
+function resolveLink(link: PackageFile['links'][number], name: string, die: number, stack: number, path: Path, place: Place): Link {
+  const at = (key: string): Where => place([...path, key]);
+  const size = (key: 'flit' | 'flit_overhead' | 'request_header' | 'response_header' | 'ack' | 'landing'): number => {
+    const bytes = whole(parseBytes(link[key], at(key)), at(key), 'bytes');
+    return key === 'flit_overhead' ? bytes : positive(bytes, link[key], at(key));
+  };
+  const transfersPerS = positive(parseTransfers(link.rate, at('rate')), link.rate, at('rate'));
+  const flitBytes = size('flit');
+  const flitOverheadBytes = size('flit_overhead');
+  if (flitOverheadBytes < 0 || flitOverheadBytes >= flitBytes) {
+    throw new InputError({
+      where: at('flit_overhead'),
+      found: `a flit of ${flitBytes} B with ${flitOverheadBytes} B of overhead`,
+      expected: 'an overhead from 0 B to less than the flit',
+    });
+  }
+  const latencyPs = Math.round(parseTime(link.latency, at('latency')));
+  if (latencyPs < 0) throw negative(link.latency, at('latency'));
+  const rawBytesPerS = (link.lanes * transfersPerS) / 8;
+  return {
+    name,
+    die,
+    stack,
+    lanes: link.lanes,
+    transfersPerS,
+    flitBytes,
+    flitOverheadBytes,
+    flitPs: (flitBytes / rawBytesPerS) * 1e12,
+    requestHeaderBytes: size('request_header'),
+    responseHeaderBytes: size('response_header'),
+    ackBytes: size('ack'),
+    latencyPs,
+    landingBytes: size('landing'),
+    rawBytesPerS,
+    payloadBytesPerS: (rawBytesPerS * (flitBytes - flitOverheadBytes)) / flitBytes,
+  };
+}
+
+/** Stack numbers of `hbm.0-2` or `hbm.4`. */
+function stacksOf(text: string, group: MemoryGroup, where: Where): number[] {
+  const match = /^(.+)\.(\d+)(?:-(\d+))?$/.exec(text);
+  const last = group.organisation.stacks - 1;
+  const expected = `a stack of memory '${group.name}', ${group.name}.0 to ${group.name}.${last}, or a range such as ${group.name}.0-${last}`;
+  if (match === null) throw new InputError({ where, found: `'${text}'`, expected });
+  const [, name, from, to] = match;
+  const [first, end] = [Number(from), Number(to ?? from)];
+  if (name !== group.name || first > end || end > last) throw new InputError({ where, found: `'${text}'`, expected });
+  return Array.from({ length: end - first + 1 }, (_, i) => first + i);
+}
+
+function distinct(names: readonly string[], list: string, place: Place): void {
+  names.forEach((name, i) => {
+    if (names.indexOf(name) === i) return;
+    throw new InputError({ where: place([list, i, 'name']), found: `a second '${name}'`, expected: 'a name of its own' });
+  });
+}
+
+export function unknownName(name: string, known: readonly string[], what: string, where: Where): InputError {
+  const like = nearest(name, known);
+  return new InputError({
+    where,
+    found: `'${name}'`,
+    expected: `${what}: ${known.join(', ')}`,
+    hint: like === undefined ? undefined : `Did you mean '${like}'?`,
+  });
+}
+
+export function positive(value: number, text: string, where: Where): number {
+  if (value > 0) return value;
+  throw new InputError({ where, found: `'${text}'`, expected: 'more than zero' });
+}
+
+export function negative(text: string, where: Where): InputError {
+  return new InputError({ where, found: `'${text}'`, expected: 'zero or more' });
+}
+
+export function whole(value: number, where: Where, unit: string): number {
+  if (Number.isInteger(value)) return value;
+  throw new InputError({ where, found: `${value} ${unit}`, expected: `a whole number of ${unit}` });
+}
+
+export const celsius = parseTemperature;
+
+function freeze<T>(value: T): T {
+  if (typeof value === 'object' && value !== null) {
+    for (const part of Object.values(value)) freeze(part);
+    Object.freeze(value);
+  }
+  return value;
+}

@@ -1,0 +1,136 @@
+import { isAlias, isMap, isScalar, isSeq, LineCounter, type Node, parseDocument } from 'yaml';
+import { InputError, type Where } from '../errors.js';
+
+/**
+ * A YAML document whose every node remembers where it was written, so that a value can be traced back through `extends` and
+ * `--set` to its file, line and column.
+ */
+export type Tree =
+  | { readonly kind: 'map'; readonly where: Where; readonly entries: ReadonlyMap<string, Entry> }
+  | { readonly kind: 'list'; readonly where: Where; readonly items: readonly Tree[] }
+  | { readonly kind: 'scalar'; readonly where: Where; readonly value: unknown };
+
+export interface Entry {
+  readonly key: Where; // where the key stands
+  readonly value: Tree;
+}
+
+export type Path = readonly (string | number)[];
+
+/** Parses YAML text; a syntax error, an unknown alias or a document that is no map is an InputError. */
+export function parseTree(text: string, file: string): Tree {
+  if (text.includes('\0')) {
+    throw new InputError({ where: { file }, found: 'a NUL byte', expected: 'a package file: YAML text' });
+  }
+  const lines = new LineCounter();
+  const document = parseDocument(text, { lineCounter: lines, uniqueKeys: true });
+  const [problem] = document.errors;
+  if (problem !== undefined) {
+    const at = problem.linePos?.[0];
+    throw new InputError({
+      where: { file, line: at?.line, column: at?.col },
+      found: problem.message.split(' at line')[0].split('\n')[0],
+      expected: 'well-formed YAML',
+    });
+  }
+  if (document.contents === null) {
+    throw new InputError({ where: { file }, found: 'an empty file', expected: 'a package: a map with the keys penstock, name, compute …' });
+  }
+  const place = (node: Node | null | undefined): Where => {
+    const { line, col } = lines.linePos(node?.range?.[0] ?? 0);
+    return { file, line, column: col };
+  };
+  const convert = (node: Node): Tree => {
+    const where = place(node);
+    if (isAlias(node)) {
+      const target = node.resolve(document);
+      if (target === undefined) {
+        throw new InputError({ where, found: `alias *${node.source}`, expected: 'an anchor of that name earlier in the file' });
+      }
+      return convert(target);
+    }
+    if (isMap(node)) {
+      const entries = new Map<string, Entry>();
+      for (const pair of node.items) {
+        const key = String(isScalar(pair.key) ? pair.key.value : pair.key);
+        const value = pair.value === null ? { kind: 'scalar' as const, where: place(pair.key as Node), value: null } : convert(pair.value as Node);
+        entries.set(key, { key: place(pair.key as Node), value });
+      }
+      return { kind: 'map', where, entries };
+    }
+    if (isSeq(node)) return { kind: 'list', where, items: node.items.map((item) => convert(item as Node)) };
+    return { kind: 'scalar', where, value: isScalar(node) ? node.value : null };
+  };
+  const tree = convert(document.contents as Node);
+  if (tree.kind !== 'map') {
+    throw new InputError({ where: tree.where, found: `a ${tree.kind}`, expected: 'a map with the keys penstock, name, compute …' });
+  }
+  return tree;
+}
+
+/** Lays `over` on `base`: maps are merged key by key, everything else is replaced. */
+export function merge(base: Tree, over: Tree): Tree {
+  if (base.kind !== 'map' || over.kind !== 'map') return over;
+  const entries = new Map(base.entries);
+  for (const [key, entry] of over.entries) {
+    const below = entries.get(key);
+    entries.set(key, below === undefined ? entry : { key: entry.key, value: merge(below.value, entry.value) });
+  }
+  return { kind: 'map', where: over.where, entries };
+}
+
+/** The plain value of a tree. */
+export function plain(tree: Tree): unknown {
+  if (tree.kind === 'scalar') return tree.value;
+  if (tree.kind === 'list') return tree.items.map(plain);
+  return Object.fromEntries([...tree.entries].map(([key, { value }]) => [key, plain(value)]));
+}
+
+/** Where the value at a path stands, or the nearest thing above it; with `key`, where its key stands. */
+export function locate(tree: Tree, path: Path, key = false): Where {
+  let at = tree;
+  let where = tree.where;
+  for (const [depth, step] of path.entries()) {
+    let next: Tree | undefined;
+    if (at.kind === 'map') {
+      const entry = at.entries.get(String(step));
+      if (entry !== undefined) {
+        next = entry.value;
+        where = key && depth === path.length - 1 ? entry.key : next.where;
+      }
+    } else if (at.kind === 'list') {
+      next = at.items[Number(step)];
+      if (next !== undefined) where = next.where;
+    }
+    if (next === undefined) break;
+    at = next;
+  }
+  return { ...where, path: path.join('.') };
+}
+
+/** A copy of the tree with one value replaced or added; the steps before the last must exist, or `missing` is thrown. */
+export function withValue(tree: Tree, path: Path, value: Tree, missing: (step: string | number, at: Tree) => Error): Tree {
+  const [step, ...rest] = path;
+  if (step === undefined) return value;
+  if (tree.kind === 'list') {
+    const index = listIndex(tree.items, step);
+    if (index < 0) throw missing(step, tree);
+    return { ...tree, items: tree.items.map((item, i) => (i === index ? withValue(item, rest, value, missing) : item)) };
+  }
+  if (tree.kind !== 'map') throw missing(step, tree);
+  const name = String(step);
+  const below: Tree = tree.entries.get(name)?.value ?? { kind: 'map', where: value.where, entries: new Map() };
+  const entries = new Map(tree.entries);
+  entries.set(name, { key: value.where, value: withValue(below, rest, value, missing) });
+  return { ...tree, entries };
+}
+
+/** A list item by its number or by its `name`. */
+function listIndex(items: readonly Tree[], step: string | number): number {
+  const number = Number(step);
+  if (Number.isInteger(number)) return number >= 0 && number < items.length ? number : -1;
+  return items.findIndex((item) => {
+    const name = item.kind === 'map' ? item.entries.get('name')?.value : undefined;
+    return name?.kind === 'scalar' && name.value === step;
+  });
+}
