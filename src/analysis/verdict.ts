@@ -1,0 +1,88 @@
+import { STACK_CLASSES, type StackClass } from '../engine/recording.js';
+import { formatBandwidth, formatPercent } from '../units.js';
+import type { Verdict } from './result-schema.js';
+
+const AT_BOUND = 0.9; // of a ceiling: nearer than this, the ceiling itself is what binds
+const COMPUTE_LEADS = 0.7; // engines computing for this share of the time bind before memory does
+const LEADING_SHARE = 0.25; // of all clocks: a cause smaller than this explains too little to be named alone
+const LEADING_FACTOR = 1.5; // and it must be this much larger than the next
+
+/** What a loss is called in a sentence. Names in the stack itself stay the classes'. */
+const CAUSES: Readonly<Record<Exclude<StackClass, 'read_data' | 'write_data'>, string>> = {
+  refresh: 'refresh',
+  row_cycle: 'opening and closing rows (row cycle)',
+  activate_window: 'the activate window (tRRD, tFAW)',
+  column_gap: 'gaps between columns of one bank group (tCCD)',
+  turnaround: 'read/write turnaround of the data bus',
+  command_bus: 'the command bus',
+  starved_down_link: 'the down links',
+  starved_up_link: 'the up links (no landing credit for read data)',
+  starved_queue_credits: 'full controller queues elsewhere (queue credits)',
+  starved_window: 'too few outstanding requests (window)',
+  starved_compute: 'compute (loads wait until tiles are done)',
+  starved_imbalance: 'imbalance (other channels were busy, these had no work)',
+  starved_arrivals: 'a lack of arrivals (the trace asked for no more)',
+  starved_drain: 'the end of the run, when the work had run out',
+};
+
+/** The figures the verdict is derived from. */
+export interface Standing {
+  readonly partial: boolean;
+  readonly achieved: number; // bytes a second
+  readonly bound: number; // bytes a second
+  readonly limit: 'dram' | 'link';
+  readonly computeUtilization: number; // 0 … 1
+  /** The bandwidth stack, ck by class of STACK_CLASSES; all 0 when it was not kept. */
+  readonly stack: readonly number[];
+}
+
+/**
+ * The sentence that says what binds and how far from the bound: a ceiling that is nearly reached, else compute when the engines
+ * were busy nearly always, else the largest cause in the bandwidth stack when one stands out, else that none does.
+ */
+export function verdict(standing: Standing): Verdict {
+  const said = judge(standing);
+  return standing.partial ? { ...said, sentence: `Stopped before the trace ended; so far: ${said.sentence}` } : said;
+}
+
+function judge({ achieved, bound, limit, computeUtilization, stack }: Standing): Verdict {
+  if (achieved === 0) {
+    return { sentence: 'Nothing binds: no byte crossed a DRAM data bus.', binds: 'nothing', distance_ratio: 0 };
+  }
+  const distance = achieved / bound;
+  const ceiling = limit === 'link' ? 'link payload ceiling' : 'refresh-derated DRAM peak';
+  const standing = `${formatBandwidth(achieved)} is ${formatPercent(distance)} of the ${ceiling}`;
+  if (distance >= AT_BOUND) {
+    const what = limit === 'link' ? 'Link bandwidth' : 'DRAM bandwidth';
+    return { sentence: `${what} binds: ${standing}.`, binds: limit, distance_ratio: distance };
+  }
+  if (computeUtilization >= COMPUTE_LEADS) {
+    const sentence = `Compute binds: the engines computed for ${formatPercent(computeUtilization)} of the time; ${standing}.`;
+    return { sentence, binds: 'compute', distance_ratio: computeUtilization };
+  }
+
+  const total = stack.reduce((sum, ck) => sum + ck, 0);
+  const losses = STACK_CLASSES.map((name, i) => ({ name, share: total === 0 ? 0 : stack[i] / total }))
+    .filter((loss): loss is { name: keyof typeof CAUSES; share: number } => loss.name in CAUSES && loss.share > 0)
+    .sort((a, b) => b.share - a.share);
+  const [first, second] = losses;
+  if (first === undefined)
+    return { sentence: `What binds was not recorded: ${standing}.`, binds: 'nothing', distance_ratio: distance };
+  if (first.share >= LEADING_SHARE && (second === undefined || first.share >= LEADING_FACTOR * second.share)) {
+    const sentence = `What binds most is ${CAUSES[first.name]}: it took ${formatPercent(first.share)} of the DRAM clocks; ${standing}.`;
+    return { sentence, binds: first.name, distance_ratio: distance };
+  }
+  const leading = losses
+    .slice(0, 3)
+    .map(({ name, share }) => `${CAUSES[name]} (${formatPercent(share)} of the clocks)`);
+  return {
+    sentence: `No single limit dominates: ${standing}; the most was lost to ${listed(leading)}.`,
+    binds: 'nothing',
+    distance_ratio: distance,
+  };
+}
+
+function listed(items: readonly string[]): string {
+  if (items.length < 2) return items.join('');
+  return `${items.slice(0, -1).join(', ')} and ${items[items.length - 1]}`;
+}
