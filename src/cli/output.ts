@@ -22,7 +22,7 @@ import { systemError } from './system-error.js';
 
 /** What each kind of output is called, and how a file that holds it begins. */
 export const KINDS = {
-  result: { name: 'a penstock result', begins: (head: string) => /^\{\s*"penstock/.test(head) },
+  result: { name: 'a penstock result', begins: (head: string) => /^\{\s*"format":\s*"penstock-result"/.test(head) },
   commandLog: {
     name: 'a command log',
     begins: (head: string) =>

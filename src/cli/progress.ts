@@ -25,8 +25,9 @@ export class ProgressBar {
 
   /** Null where standard error is not a terminal. */
   static on(stream: NodeJS.WriteStream, whole: Whole, env: NodeJS.ProcessEnv): ProgressBar | null {
-    if (stream.isTTY !== true || env['TERM'] === 'dumb') return null;
-    return new ProgressBar(whole, stream, !env['NO_COLOR']);
+    const { NO_COLOR, TERM } = env;
+    if (stream.isTTY !== true || TERM === 'dumb') return null;
+    return new ProgressBar(whole, stream, !NO_COLOR);
   }
 
   readonly show = (progress: Progress): void => {

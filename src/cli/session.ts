@@ -15,8 +15,9 @@ export class Session {
 
   constructor(signal: AbortSignal) {
     this.signal = signal;
-    const { stdout, env } = process;
-    this.colour = stdout.isTTY === true && !env['NO_COLOR'] && env['TERM'] !== 'dumb';
+    const { stdout } = process;
+    const { NO_COLOR, TERM } = process.env;
+    this.colour = stdout.isTTY === true && !NO_COLOR && TERM !== 'dumb';
     this.width = Math.max(40, Math.min(100, stdout.columns ?? 100));
     stdout.on('error', (error: NodeJS.ErrnoException) => {
       if (error.code === 'EPIPE') this.closed = true;

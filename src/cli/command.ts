@@ -1,0 +1,77 @@
+/** What a command is to the command line: its words and options, and the function that does it. */
+import type { Argv, InferredOptionTypes, Options, PositionalOptions } from 'yargs';
+import { InputError } from '../errors.js';
+import type { Session } from './session.js';
+import type { Usable } from './usage.js';
+
+export interface Command extends Usable {
+  add(cli: Argv, session: Session): Argv;
+}
+
+interface Definition<P extends Record<string, PositionalOptions>, O extends Record<string, Options>> {
+  readonly usage: string; // as in the help: 'run <trace>'
+  readonly about: string;
+  readonly positionals: P;
+  readonly options: O;
+  readonly examples: readonly (readonly [command: string, does: string])[];
+  /** Does the work. What it throws decides the exit code; Session.exitCode does otherwise. */
+  readonly main: (args: InferredOptionTypes<P> & InferredOptionTypes<O>, session: Session) => Promise<void>;
+}
+
+export function command<P extends Record<string, PositionalOptions>, O extends Record<string, Options>>(
+  definition: Definition<P, O>,
+): Command {
+  const { usage, about, positionals, options, examples, main } = definition;
+  const single = Object.keys(options).filter((name) => !options[name].array);
+  return {
+    name: usage.split(' ')[0],
+    usage,
+    options: Object.keys(options),
+    add: (cli, session) =>
+      cli.command(
+        usage,
+        about,
+        (own) => {
+          for (const [name, positional] of Object.entries(positionals)) own.positional(name, positional);
+          return own
+            .options(options)
+            .example(examples.map(([line, does]) => [`$0 ${line}`, does] as [string, string]))
+            .check((args) => {
+              const twice = single.find((name) => Array.isArray(args[name]));
+              if (twice === undefined) return true;
+              throw new Error(`--${twice} was given more than once`);
+            });
+        },
+        (args) => main(args as unknown as InferredOptionTypes<P> & InferredOptionTypes<O>, session),
+      ),
+  };
+}
+
+/** Options that several commands share. */
+export const PACKAGE = {
+  package: {
+    alias: 'p',
+    type: 'string',
+    demandOption: true,
+    requiresArg: true,
+    describe: 'package file (YAML)',
+  },
+} as const satisfies Record<string, Options>;
+
+export const SET = {
+  set: {
+    type: 'string',
+    array: true,
+    requiresArg: true,
+    default: [] as string[],
+    defaultDescription: 'nothing',
+    describe: 'override one key of the package, path=value; may be given again',
+  },
+} as const satisfies Record<string, Options>;
+
+/** A whole number from an option, `least` or more. Throws InputError. */
+export function wholeNumber(option: string, text: string, least: number): number {
+  const value = Number(text);
+  if (/^\d+$/.test(text) && Number.isSafeInteger(value) && value >= least) return value;
+  throw new InputError({ where: { file: option }, found: `'${text}'`, expected: `a whole number, ${least} or more` });
+}

@@ -1,0 +1,104 @@
+/**
+ * `penstock run`: the map of the house. From top to bottom: load the package, open the trace, run it, work out what the figures
+ * mean, report. Each step is one call into one folder of src.
+ */
+import { buildResult, Delays } from '../../analysis/index.js';
+import { loadPackage } from '../../config/index.js';
+import { run as simulate } from '../../engine/index.js';
+import { jsonReport, textReport } from '../../report/index.js';
+import { command, PACKAGE, SET, wholeNumber } from '../command.js';
+import { CommandLog } from '../command-log.js';
+import { OutputFile } from '../output.js';
+import { ProgressBar } from '../progress.js';
+import { parseUntil } from '../quantities.js';
+import { openFor, usefulBytes } from '../trace.js';
+
+const CHECKS_FAILED = 3; // exit code
+
+export const run = command({
+  usage: 'run <trace>',
+  about: 'simulate a trace on a package and report',
+  positionals: {
+    trace: { type: 'string', demandOption: true, describe: 'trace file (.csv, .csv.gz), or - for standard input' },
+  },
+  options: {
+    ...PACKAGE,
+    ...SET,
+    replay: {
+      choices: ['closed', 'open', 'paced'],
+      default: 'closed',
+      requiresArg: true,
+      describe: 'closed: as fast as windows let; open: recorded times are arrivals; paced: recorded gaps are kept',
+    },
+    seed: { type: 'string', default: '1', requiresArg: true, describe: 'seed of the random patterns' },
+    until: { type: 'string', requiresArg: true, describe: 'stop at this simulated time, for example 2ms' },
+    clock: {
+      type: 'string',
+      requiresArg: true,
+      describe: 'frequency of the clock that column cycle counts, for example 1.7GHz',
+    },
+    'skip-bad-rows': {
+      type: 'string',
+      default: '0',
+      requiresArg: true,
+      describe: 'bad rows of the trace to skip and count before one stops the run',
+    },
+    json: {
+      type: 'string',
+      requiresArg: true,
+      describe: 'write the result document; - writes it to standard output, in place of the report',
+    },
+    'command-log': { type: 'string', requiresArg: true, describe: 'write every DRAM command (.csv, .csv.gz)' },
+  },
+  examples: [
+    ['run traces/wagtail-step.csv -p configs/wagtail.yaml', 'the demo'],
+    [
+      'run traces/wagtail-step.csv -p configs/wagtail.yaml --set memory.0.controller.page=closed --json closed.json',
+      'one key changed, figures kept',
+    ],
+    [
+      'run access.csv.gz -p configs/wagtail.yaml --replay open --until 2ms --command-log commands.csv.gz',
+      'recorded arrivals, every DRAM command written',
+    ],
+  ],
+  main: async (args, session) => {
+    // the package, with the overrides laid over it
+    const pkg = loadPackage(args.package, args.set);
+
+    // the trace: its rows are read as the engine asks for them
+    const skipBadRows = wholeNumber('--skip-bad-rows', args['skip-bad-rows'], 0);
+    const trace = await openFor(pkg, args.trace, { skipBadRows, clock: args.clock });
+
+    // the files asked for are opened before anything is computed, so that a bad place costs no waiting
+    const untilPs = parseUntil(args.until);
+    const jsonFile = args.json === undefined || args.json === '-' ? null : new OutputFile(args.json, 'result');
+    const log = args['command-log'] === undefined ? null : new CommandLog(args['command-log'], pkg);
+    const progress = ProgressBar.on(process.stderr, { bytes: usefulBytes(trace), untilPs }, process.env);
+
+    // the engine does the work and hands finished requests to the collector on the way
+    const delays = new Delays();
+    const options = {
+      replay: args.replay as 'closed' | 'open' | 'paced',
+      seed: args.seed,
+      untilPs,
+      windowPs: Number.POSITIVE_INFINITY,
+      attribution: true,
+      onCommand: log?.sink ?? null,
+      onProgress: progress?.show ?? null,
+      signal: session.signal,
+    };
+    const recording = await simulate(pkg, trace, options, [delays]).finally(() => progress?.stop());
+
+    // what was recorded becomes figures, and the figures become words
+    const result = buildResult(pkg, trace, options, recording, delays);
+    const document = args.json === undefined ? '' : jsonReport(result);
+    jsonFile?.write(document);
+    log?.finish();
+    jsonFile?.commit();
+    await session.print(args.json === '-' ? document : textReport(result, session));
+    const failed = result.checks.filter((check) => !check.ok);
+    if (failed.length === 0) return;
+    session.warn(`penstock: the result must not be used: ${failed.map(({ name }) => name).join(', ')} failed`);
+    session.exitCode = CHECKS_FAILED;
+  },
+});
