@@ -2,7 +2,7 @@
 import type { Argv, InferredOptionTypes, Options, PositionalOptions } from 'yargs';
 import { InputError } from '../errors.js';
 import type { Session } from './session.js';
-import type { Usable } from './usage.js';
+import { type Usable, UsageError } from './usage.js';
 
 export interface Command extends Usable {
   add(cli: Argv, session: Session): Argv;
@@ -27,6 +27,9 @@ export function command<P extends Record<string, PositionalOptions>, O extends R
     name: usage.split(' ')[0],
     usage,
     options: Object.keys(options),
+    letters: Object.fromEntries(
+      Object.entries(options).flatMap(([name, { alias }]) => (typeof alias === 'string' ? [[alias, name]] : [])),
+    ),
     add: (cli, session) =>
       cli.command(
         usage,
@@ -35,11 +38,11 @@ export function command<P extends Record<string, PositionalOptions>, O extends R
           for (const [name, positional] of Object.entries(positionals)) own.positional(name, positional);
           return own
             .options(options)
-            .example(examples.map(([line, does]) => [`$0 ${line}`, does] as [string, string]))
+            .epilogue(`Examples:\n${examples.map(([line, does]) => `  # ${does}\n  penstock ${line}`).join('\n')}`)
             .check((args) => {
               const twice = single.find((name) => Array.isArray(args[name]));
               if (twice === undefined) return true;
-              throw new Error(`--${twice} was given more than once`);
+              throw new UsageError(`penstock: ${usage.split(' ')[0]}: --${twice} was given more than once`);
             });
         },
         (args) => main(args as unknown as InferredOptionTypes<P> & InferredOptionTypes<O>, session),

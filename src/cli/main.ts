@@ -82,7 +82,7 @@ async function parse(argv: string[]): Promise<void> {
         : usageError(complaint, argv, COMMANDS);
     })
     .epilogue(
-      'Exit codes: 0 fine, 1 audit found violations, 2 the input is wrong, 3 the program’s own checks failed,\n4 the system failed, 130 interrupted.',
+      'Exit codes: 0 fine, 1 audit found violations, 2 the input is wrong, 3 the program’s own checks\nfailed, 4 the system failed, 130 interrupted.',
     );
   for (const command of COMMANDS) command.add(cli, session);
   await cli.parseAsync();

@@ -1,5 +1,5 @@
 /** Progress on standard error: only where someone looks at it, and only for what takes longer than two seconds. */
-import { Format, SingleBar } from 'cli-progress';
+import bars from 'cli-progress';
 import type { Progress } from '../engine/index.js';
 import { formatCount, formatTime } from '../units.js';
 
@@ -15,7 +15,7 @@ export interface Whole {
 /** Shows how far a run is. Give `show` to the engine and call `stop` before anything else is printed. */
 export class ProgressBar {
   private readonly startMs = performance.now();
-  private bar: SingleBar | null = null;
+  private bar: bars.SingleBar | null = null;
 
   constructor(
     private readonly whole: Whole,
@@ -36,10 +36,10 @@ export class ProgressBar {
     const done = Math.min(1, Math.max(progress.bytes / this.whole.bytes, progress.simulatedPs / this.whole.untilPs));
     const text = describe(progress, done, seconds);
     if (this.bar === null) {
-      this.bar = new SingleBar({
+      this.bar = new bars.SingleBar({
         format: (options, params, payload) =>
           done > 0 || params.value > 0
-            ? `${paint(Format.BarFormat(params.progress, options), this.colour)} ${payload.text}`
+            ? `${paint(bars.Format.BarFormat(params.progress, options), this.colour)} ${payload.text}`
             : payload.text,
         barsize: 24,
         barCompleteString: '='.repeat(24),

@@ -10,7 +10,8 @@ export class UsageError extends Error {
 export interface Usable {
   readonly name: string; // 'run'
   readonly usage: string; // 'run <trace>'
-  readonly options: readonly string[]; // names without dashes, '--help' and '--version' not among them
+  readonly options: readonly string[]; // names without dashes, 'help' and 'version' not among them
+  readonly letters: Readonly<Record<string, string>>; // one-letter forms and the option each stands for
 }
 
 const EVERYWHERE = ['help', 'version'];
@@ -22,7 +23,7 @@ export function usageError(complaint: string, argv: readonly string[], commands:
   const command = commands.find(({ name }) => name === argv[0]);
   const problem = command === undefined ? noCommand(argv, commands) : inCommand(complaint, argv, command);
   const help = command === undefined ? 'penstock --help' : `penstock ${command.name} --help`;
-  return new UsageError(`penstock: ${problem}. See ${help}`);
+  return new UsageError(`penstock: ${problem}${problem.endsWith('?') ? '' : '.'} See ${help}`);
 }
 
 function noCommand(argv: readonly string[], commands: readonly Usable[]): string {
@@ -32,19 +33,23 @@ function noCommand(argv: readonly string[], commands: readonly Usable[]): string
   if (word === undefined) return `no command was given; ${list}`;
   if (word.startsWith('-')) return `found ${word}; expected a command first; ${list}`;
   const like = nearest(word, names);
-  return `there is no command '${word}'; ${like === undefined ? list : `did you mean '${like}'?`}`.replace(/\?$/, '');
+  return `there is no command '${word}'; ${like === undefined ? list : `did you mean '${like}'?`}`;
 }
 
-function inCommand(complaint: string, argv: readonly string[], { name, usage, options }: Usable): string {
+function inCommand(complaint: string, argv: readonly string[], { name, usage, options, letters }: Usable): string {
+  const all = [...options, ...EVERYWHERE];
+  // a misspelt option is the cause of whatever else is missing
+  const strange = optionsIn(argv).find((given) =>
+    given.startsWith('--') ? !all.includes(given.slice(2)) : !['h', ...Object.keys(letters)].includes(given.slice(1)),
+  );
+  if (strange !== undefined) {
+    const like = nearest(strange.replace(/^-+/, ''), all);
+    const known = `its options are ${all.map((option) => `--${option}`).join(', ')}`;
+    return `${name}: there is no option ${strange}; ${like === undefined ? known : `did you mean --${like}?`}`;
+  }
   const [, unknown] = /^Unknown arguments?: (.*)$/.exec(complaint) ?? [];
   if (unknown !== undefined) {
-    const words = unknown.split(', ');
-    const option = words.find((word) => isOption(word, argv));
-    if (option === undefined) return `${name}: found '${words[0]}', which is one argument too many; expected ${usage}`;
-    const given = `${option.length === 1 ? '-' : '--'}${option}`;
-    const like = nearest(option, [...options, ...EVERYWHERE]);
-    const known = `its options are ${[...options, ...EVERYWHERE].map((o) => `--${o}`).join(', ')}`;
-    return `${name}: there is no option ${given}; ${like === undefined ? known : `did you mean --${like}`}`;
+    return `${name}: found '${unknown.split(', ')[0]}', which is one argument too many; expected ${usage}`;
   }
   const [, missing] = /^Missing required arguments?: (.*)$/.exec(complaint) ?? [];
   if (missing !== undefined) {
@@ -52,7 +57,7 @@ function inCommand(complaint: string, argv: readonly string[], { name, usage, op
     return `${name}: ${needed.join(' and ')} must be given`;
   }
   const [, valueless] = /^Not enough arguments following: (.*)$/.exec(complaint) ?? [];
-  if (valueless !== undefined) return `${name}: --${valueless} needs a value`;
+  if (valueless !== undefined) return `${name}: --${letters[valueless] ?? valueless} needs a value`;
   if (complaint.startsWith('Not enough non-option arguments'))
     return `${name}: something is missing; expected ${usage}`;
   const [, argument, given, choices] = /Argument: (.*?), Given: (.*?), Choices: (.*)/.exec(complaint) ?? [];
@@ -62,18 +67,14 @@ function inCommand(complaint: string, argv: readonly string[], { name, usage, op
       choices.split(', ').map((choice) => choice.replaceAll('"', '')),
     );
     const what = options.includes(argument) ? `--${argument}` : argument;
-    return `${name}: ${what}: found ${given}; expected one of ${choices}${like === undefined ? '' : `; did you mean ${like}`}`;
+    return `${name}: ${what}: found ${given}; expected one of ${choices}${like === undefined ? '' : `; did you mean ${like}?`}`;
   }
   return `${name}: ${complaint}`;
 }
 
-/** Was `word` given as an option, not as an argument of its own? */
-function isOption(word: string, argv: readonly string[]): boolean {
-  const dashed =
-    word.length === 1 ? new RegExp(`^-[^-]*${literally(word)}`) : new RegExp(`^--?${literally(word)}(=|$)`);
-  return argv.some((argument) => dashed.test(argument));
-}
-
-function literally(text: string): string {
-  return text.replace(/[^\w]/g, '\\$&');
+/** The options of a command line as they were given, without their values: '--json', '-p'. */
+function optionsIn(argv: readonly string[]): string[] {
+  const end = argv.indexOf('--');
+  const before = end < 0 ? argv : argv.slice(0, end);
+  return before.flatMap((argument) => /^(--[a-z][^=]*|-[a-z])/i.exec(argument)?.[1] ?? []);
 }
