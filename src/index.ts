@@ -8,6 +8,7 @@
  *
  * Runs in one thread follow each other; for runs side by side give each a worker thread.
  */
+import { readFileSync } from 'node:fs';
 import { buildResult, Delays, type Result } from './analysis/index.js';
 import { domains, type Package } from './config/index.js';
 import { geometryOf, type RunOptions, run } from './engine/index.js';
@@ -31,6 +32,9 @@ export type {
 } from './trace/index.js';
 export { accessCsv, synthesise } from './trace/index.js';
 
+/** Version of the program, as results carry it. */
+export const VERSION: string = JSON.parse(readFileSync(new URL('../package.json', import.meta.url), 'utf8')).version;
+
 /**
  * Opens a trace file (`.csv`, `.csv.gz`). With `package` its rows are checked against that package's dies and capacity; without,
  * only for form. A trace can be simulated once: it is read as it is used.
@@ -42,9 +46,11 @@ export function openTrace(file: string, options: TraceOptions & { readonly packa
   return openAnyTrace(file, { dieNames, geometry: geometryOf(pkg, domains(pkg)), ...others });
 }
 
-export type SimulateOptions = Partial<
-  Pick<RunOptions, 'replay' | 'seed' | 'untilPs' | 'onCommand' | 'onProgress' | 'signal'>
->;
+export interface SimulateOptions
+  extends Partial<Pick<RunOptions, 'replay' | 'seed' | 'untilPs' | 'onCommand' | 'onProgress' | 'signal'>> {
+  /** The overrides the package was loaded with: the result says them again. */
+  readonly overrides?: readonly string[];
+}
 
 /**
  * Simulates `trace` on `pkg`. By default in closed loop, with seed '1', to the end of the trace. The result is the document that
@@ -54,11 +60,17 @@ export async function simulate(pkg: Package, trace: Trace, options: SimulateOpti
   const full = runOptions(options);
   const delays = new Delays();
   const recording = await run(pkg, trace, full, [delays]);
-  return buildResult(pkg, trace, full, recording, delays);
+  return buildResult(
+    pkg,
+    trace,
+    { version: VERSION, options: full, overrides: options.overrides ?? [] },
+    recording,
+    delays,
+  );
 }
 
-/** Run options with every default filled in. */
-export function runOptions(options: SimulateOptions = {}): RunOptions {
+/** The engine's options, with every default filled in. */
+function runOptions({ overrides: _, ...given }: SimulateOptions): RunOptions {
   return {
     replay: 'closed',
     seed: '1',
@@ -68,6 +80,6 @@ export function runOptions(options: SimulateOptions = {}): RunOptions {
     onCommand: null,
     onProgress: null,
     signal: null,
-    ...options,
+    ...given,
   };
 }

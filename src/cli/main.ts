@@ -1,9 +1,9 @@
 #!/usr/bin/env node
 /** The program: reads the command line, runs one command, and is the only place that decides an exit code. */
-import { readFileSync } from 'node:fs';
 import yargs from 'yargs';
 import { hideBin } from 'yargs/helpers';
 import { CheckError, InputError, SystemError } from '../errors.js';
+import { VERSION } from '../index.js';
 import { audit } from './commands/audit.js';
 import { describe } from './commands/describe.js';
 import { run } from './commands/run.js';
@@ -44,16 +44,14 @@ async function main(argv: string[]): Promise<number> {
   try {
     await parse(argv);
     await session.print(''); // throws what standard output could not take
-    return interrupt.signal.aborted ? INTERRUPTED : session.exitCode;
+    return session.exitCode !== OK || !interrupt.signal.aborted ? session.exitCode : INTERRUPTED;
   } catch (error) {
     discardUnfinished();
-    const code = fail(error);
-    return interrupt.signal.aborted && code === OK ? INTERRUPTED : code;
+    return fail(error);
   }
 }
 
 async function parse(argv: string[]): Promise<void> {
-  const { version } = JSON.parse(readFileSync(new URL('../../package.json', import.meta.url), 'utf8'));
   const cli = yargs(argv)
     .scriptName('penstock')
     .usage(
@@ -71,7 +69,7 @@ async function parse(argv: string[]): Promise<void> {
     .strict()
     .demandCommand(1, 1)
     .recommendCommands()
-    .version(version)
+    .version(VERSION)
     .help()
     .alias('help', 'h')
     .wrap(Math.min(WIDTH, process.stdout.columns ?? WIDTH))

@@ -5,6 +5,7 @@
 import { buildResult, Delays } from '../../analysis/index.js';
 import { loadPackage } from '../../config/index.js';
 import { run as simulate } from '../../engine/index.js';
+import { VERSION } from '../../index.js';
 import { jsonReport, textReport } from '../../report/index.js';
 import { command, PACKAGE, SET, wholeNumber } from '../command.js';
 import { CommandLog } from '../command-log.js';
@@ -90,7 +91,7 @@ export const run = command({
     const recording = await simulate(pkg, trace, options, [delays]).finally(() => progress?.stop());
 
     // what was recorded becomes figures, and the figures become words
-    const result = buildResult(pkg, trace, options, recording, delays);
+    const result = buildResult(pkg, trace, { version: VERSION, options, overrides: args.set }, recording, delays);
     const document = args.json === undefined ? '' : jsonReport(result);
     jsonFile?.write(document);
     log?.finish();
