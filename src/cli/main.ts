@@ -4,7 +4,6 @@ import yargs from 'yargs';
 import { hideBin } from 'yargs/helpers';
 import { CheckError, InputError, SystemError } from '../errors.js';
 import { VERSION } from '../index.js';
-import { audit } from './commands/audit.js';
 import { describe } from './commands/describe.js';
 import { run } from './commands/run.js';
 import { schema } from './commands/schema.js';
@@ -14,7 +13,7 @@ import { Session } from './session.js';
 import { isSystemError, systemError } from './system-error.js';
 import { UsageError, usageError } from './usage.js';
 
-const COMMANDS = [run, describe, synth, audit, schema];
+const COMMANDS = [run, describe, synth, schema];
 const WIDTH = 100; // columns of the help, at most
 const OK = 0;
 const BAD_INPUT = 2;

@@ -1,6 +1,6 @@
 /** `penstock describe`: the package as resolved, and what follows from it without running anything. */
 import { describePackage, loadPackage } from '../../config/index.js';
-import { describeText } from '../../report/index.js';
+import { descriptionReport, prettyJson } from '../../report/index.js';
 import { command, SET } from '../command.js';
 
 export const describe = command({
@@ -19,6 +19,6 @@ export const describe = command({
   ],
   main: async (args, session) => {
     const description = describePackage(loadPackage(args.package, args.set));
-    await session.print(args.json ? `${JSON.stringify(description, null, 2)}\n` : describeText(description, session));
+    await session.print(args.json ? `${prettyJson(description)}\n` : descriptionReport(description, session));
   },
 });
