@@ -1,0 +1,11 @@
+/**
+ * report: a result in words, tables and text formats.
+ *
+ * In: a Result (or a package's Description). Out: a string; the command line decides where it goes.
+ * Its one decision: a reporter is a pure function of the document and a style, so what is printed can always be had again.
+ * Not modelled: nothing is computed here but ratios of two figures of the document.
+ */
+export { descriptionReport } from './describe.js';
+export { jsonReport, prettyJson } from './json.js';
+export { ink, plain, type TextStyle, table, wrap } from './style.js';
+export { textReport } from './text.js';

@@ -1,0 +1,79 @@
+import type { Result } from '../../analysis/result-schema.js';
+import { STACK_CLASSES, type StackClass } from '../../engine/recording.js';
+import { formatBandwidth, formatPercent, formatTime } from '../../units.js';
+import { bar, facts, type Ink } from '../style.js';
+
+/** Achieved against peak. */
+export function bandwidthSection({ bandwidth, makespan_ps }: Result, { chalk, width }: Ink): string {
+  const share = bandwidth.achieved_bytes_per_s / bandwidth.peak_bytes_per_s;
+  const ofBound = bandwidth.achieved_bytes_per_s / bandwidth.bound_bytes_per_s;
+  const achieved = `${formatBandwidth(bandwidth.achieved_bytes_per_s)} achieved in ${formatTime(makespan_ps)}`;
+  const ratios = `${formatPercent(share)} of peak, ${formatPercent(ofBound)} of the bound that holds`;
+  const rates = bandwidth.stacks.map((stack) => stack.achieved_bytes_per_s);
+  return [
+    chalk.bold('Bandwidth'),
+    `  ${chalk.bold(achieved)}  ${chalk.green(bar(share, 20))}  ${ratios}`,
+    facts(
+      [
+        `read ${formatBandwidth(bandwidth.read_bytes_per_s)}`,
+        `write ${formatBandwidth(bandwidth.write_bytes_per_s)}`,
+        `useful ${formatBandwidth(bandwidth.useful_bytes_per_s)}`,
+        `a stack ${formatBandwidth(Math.min(...rates))} to ${formatBandwidth(Math.max(...rates))}`,
+      ],
+      width,
+      '  ',
+    ),
+    facts(
+      [
+        `peak ${formatBandwidth(bandwidth.peak_bytes_per_s)}`,
+        `refresh-derated ${formatBandwidth(bandwidth.refresh_derated_bytes_per_s)}`,
+        `link ceiling for this mix ${formatBandwidth(bandwidth.link_ceiling_bytes_per_s)}`,
+      ],
+      width,
+      '  ',
+    ),
+  ].join('\n');
+}
+
+/** What the classes of the bandwidth stack are called on the page. */
+const LABELS: Readonly<Record<StackClass, string>> = {
+  read_data: 'read data',
+  write_data: 'write data',
+  refresh: 'refresh',
+  row_cycle: 'row cycle',
+  activate_window: 'activate window',
+  column_gap: 'column gap',
+  turnaround: 'turnaround',
+  command_bus: 'command bus',
+  starved_down_link: 'no work: down link',
+  starved_up_link: 'no work: up link',
+  starved_queue_credits: 'no work: queue credits',
+  starved_window: 'no work: window',
+  starved_compute: 'no work: compute',
+  starved_imbalance: 'no work: imbalance',
+  starved_arrivals: 'no work: arrivals',
+  starved_drain: 'no work: drain',
+};
+
+/** Where every clock of the data buses went, largest first after the data itself, in two columns. */
+export function stackSection({ bandwidth_stack: stack }: Result, { chalk }: Ink): string {
+  const title = chalk.bold('Where the DRAM clocks went');
+  if (stack.total === 0) return `${title}\n  no clock passed`;
+  const parts = STACK_CLASSES.map((name) => ({ name, share: stack[name] / stack.total }));
+  const data = parts.slice(0, 2);
+  const losses = parts.slice(2).filter(({ share }) => share > 0);
+  losses.sort((a, b) => b.share - a.share);
+  const cells = [...data, ...losses].map(({ name, share }) => {
+    const paint = name.endsWith('_data') ? chalk.green : name.startsWith('starved') ? chalk.cyan : chalk.yellow;
+    return `${LABELS[name].padEnd(22)} ${paint(bar(share, 14))} ${percent(share)}`;
+  });
+  const half = Math.ceil(cells.length / 2);
+  const lines = cells
+    .slice(0, half)
+    .map((cell, i) => `  ${cell}${cells[half + i] === undefined ? '' : `     ${cells[half + i]}`}`);
+  return [title, ...lines].join('\n');
+}
+
+function percent(share: number): string {
+  return `${(100 * share).toFixed(1).padStart(5)} %`;
+}

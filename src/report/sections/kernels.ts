@@ -1,0 +1,58 @@
+import type { KernelResult, Result } from '../../analysis/result-schema.js';
+import { formatBandwidth, formatFlops, formatPercent, formatTime } from '../../units.js';
+import { facts, type Ink, plain, table } from '../style.js';
+
+const NAME = 18; // columns
+const MOST = 20; // kernels on the page
+
+/** Compute utilization in total and by die. */
+export function computeSection({ compute }: Result, { chalk, width }: Ink): string {
+  const dies = compute.dies.map((die) => {
+    const waiting = die.mean_outstanding_requests.toFixed(0);
+    return `${plain(die.name, 24)} ${formatPercent(die.utilization)}, ${waiting} requests outstanding`;
+  });
+  const total = `${formatPercent(compute.utilization)} of engine time computing`;
+  return `${chalk.bold('Compute utilization')}\n${facts([total, ...dies], width, '  ')}`;
+}
+
+/** Each kernel against its roofline. */
+export function kernelSection({ kernels }: Result, { chalk }: Ink): string {
+  const shown = kernels.length <= MOST ? kernels : longest(kernels);
+  const estimates = shown.some((kernel) => kernel.estimate_ps !== null);
+  const head = ['Kernels', 'time', 'bandwidth', 'attained', 'bound', 'by', 'reached', 'compute', 'read', 'estimate'];
+  const rows = shown.map((kernel) => row(kernel));
+  const cut = (cells: readonly string[]): readonly string[] => (estimates ? cells : cells.slice(0, -1));
+  const text = table(cut(head), rows.map(cut), [5]);
+  // the heading stands in the table's first line
+  const [first, ...rest] = text.split('\n');
+  const lines = [chalk.bold(first.slice(2)), ...rest];
+  const more = kernels.length - shown.length;
+  if (more > 0) lines.push(`  and ${more} shorter ones (--json has them all)`);
+  return lines.join('\n');
+}
+
+function longest(kernels: readonly KernelResult[]): KernelResult[] {
+  const least = [...kernels].sort((a, b) => b.duration_ps - a.duration_ps)[MOST - 1].duration_ps;
+  return kernels.filter((kernel) => kernel.duration_ps >= least).slice(0, MOST);
+}
+
+function row(kernel: KernelResult): string[] {
+  const {
+    attained_flops_per_s: flops,
+    bound_flops_per_s: bound,
+    roofline_ratio: ratio,
+    estimate_ps: estimate,
+  } = kernel;
+  return [
+    plain(kernel.name, NAME),
+    formatTime(kernel.duration_ps),
+    formatBandwidth(kernel.attained_bytes_per_s),
+    flops === null ? '-' : formatFlops(flops),
+    bound === null ? formatBandwidth(kernel.bound_bytes_per_s) : formatFlops(bound),
+    kernel.limit === 'none' ? '-' : kernel.limit,
+    ratio === null ? '-' : formatPercent(ratio),
+    formatPercent(kernel.compute_utilization),
+    kernel.mean_read_latency_ps === null ? '-' : formatTime(kernel.mean_read_latency_ps),
+    estimate === null || kernel.duration_ps === 0 ? '-' : `x ${(kernel.duration_ps / estimate).toFixed(2)}`,
+  ];
+}
