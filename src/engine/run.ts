@@ -88,7 +88,8 @@ export async function runEngine(pkg: Package, trace: Trace, options: RunOptions,
         break;
       }
       if (next >= frontPs) frontPs = next + 1;
-      const now = Math.floor(frontPs / halfPs) - 2;
+      // whatever the front end does from `next` on reaches a queue later than that
+      const now = Math.floor(next / halfPs) - 2;
       if (now > backHalf) {
         backHalf = now;
         skipEgress(Math.floor(now / 2) - 1);
