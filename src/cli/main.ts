@@ -28,6 +28,7 @@ const session = new Session(interrupt.signal);
 for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) {
   process.on(signal, () => {
     if (interrupt.signal.aborted) leave(INTERRUPTED);
+    session.warn(`${process.stderr.isTTY ? '\n' : ''}penstock: stopping; interrupt again to leave at once`);
     interrupt.abort();
   });
 }
@@ -71,7 +72,7 @@ async function parse(argv: string[]): Promise<void> {
     .version(VERSION)
     .help()
     .alias('help', 'h')
-    .wrap(Math.min(WIDTH, process.stdout.columns ?? WIDTH))
+    .wrap(Math.min(WIDTH, process.stdout.columns || WIDTH))
     .exitProcess(false)
     .fail((complaint, error) => {
       throw error instanceof Error && !(complaint && complaint === error.message && error.name === 'YError')

@@ -18,7 +18,7 @@ export class Session {
     const { stdout } = process;
     const { NO_COLOR, TERM } = process.env;
     this.colour = stdout.isTTY === true && !NO_COLOR && TERM !== 'dumb';
-    this.width = Math.max(40, Math.min(100, stdout.columns ?? 100));
+    this.width = Math.max(40, Math.min(100, stdout.columns || 100));
     stdout.on('error', (error: NodeJS.ErrnoException) => {
       if (error.code === 'EPIPE') this.closed = true;
       else this.failure = systemError('standard output: cannot be written', error);
