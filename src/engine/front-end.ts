@@ -311,7 +311,8 @@ export class FrontEnd {
     server.send(now, link.requestHeaderBytes + (op === WRITE ? atoms * this.atomBytes : 0));
     doubles[d + at.START] = server.startedPs;
     this.lastSendPs = now;
-    const arrive = Math.ceil((server.sentPs + link.latencyPs + this.ingressPs) / this.halfPs - 1e-9);
+    // the controller sees it at a whole DRAM clock
+    const arrive = 2 * Math.ceil((server.sentPs + link.latencyPs + this.ingressPs) / (2 * this.halfPs) - 1e-9);
     const bankColumn = ints[i + at.BANK_COLUMN];
     sendToChannel(
       ints[i + at.PLACE],
