@@ -35,7 +35,10 @@ export function command<P extends Record<string, PositionalOptions>, O extends R
         usage,
         about,
         (own) => {
-          for (const [name, positional] of Object.entries(positionals)) own.positional(name, positional);
+          for (const [name, positional] of Object.entries(positionals)) {
+            own.positional(name, positional);
+            if (!('array' in positional)) own.nargs(name, 1); // so that - is a value too
+          }
           return own
             .options(options)
             .epilogue(`Examples:\n${examples.map(([line, does]) => `  # ${does}\n  penstock ${line}`).join('\n')}`)
