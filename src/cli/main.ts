@@ -9,7 +9,7 @@ import { run } from './commands/run.js';
 import { schema } from './commands/schema.js';
 import { synth } from './commands/synth.js';
 import { discardUnfinished } from './output.js';
-import { Session } from './session.js';
+import { Interrupted, Session } from './session.js';
 import { isSystemError, systemError } from './system-error.js';
 import { UsageError, usageError } from './usage.js';
 
@@ -38,7 +38,9 @@ for (const event of ['uncaughtException', 'unhandledRejection'] as const) {
   process.on(event, (error: unknown) => leave(fail(error)));
 }
 
-process.exitCode = await main(hideBin(process.argv));
+const code = await main(hideBin(process.argv));
+if (interrupt.signal.aborted) leave(code); // input that is still open would keep the process
+process.exitCode = code;
 
 async function main(argv: string[]): Promise<number> {
   try {
@@ -94,6 +96,7 @@ function fail(error: unknown): number {
     session.warn(error.message);
     return BAD_INPUT;
   }
+  if (error instanceof Interrupted) return INTERRUPTED;
   if (error instanceof CheckError) {
     session.warn(`penstock: a check of the program itself failed, and its results must not be used: ${error.message}`);
     return CHECKS_FAILED;

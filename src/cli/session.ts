@@ -1,6 +1,11 @@
 /** What a command needs of the world around it: where to say things, how wide and how colourful, and when to stop. */
 import { systemError } from './system-error.js';
 
+/** Thrown where an interrupt came before there was anything to report. */
+export class Interrupted extends Error {
+  override readonly name = 'Interrupted';
+}
+
 export class Session {
   /** What the process ends with when nothing is thrown; see the exit codes in the README. */
   exitCode = 0;
@@ -44,6 +49,18 @@ export class Session {
   /** Writes a line to standard error. */
   warn(text: string): void {
     process.stderr.write(`${text}\n`);
+  }
+
+  /** Waits for `work`, but no longer than until an interrupt. Throws Interrupted. */
+  async unlessInterrupted<T>(work: Promise<T>): Promise<T> {
+    const { signal } = this;
+    let stop = (): void => {};
+    const interrupted = new Promise<never>((_, reject) => {
+      stop = () => reject(new Interrupted('interrupted before there was anything to report'));
+      signal.addEventListener('abort', stop, { once: true });
+      if (signal.aborted) stop();
+    });
+    return Promise.race([work, interrupted]).finally(() => signal.removeEventListener('abort', stop));
   }
 
   /** Lets signals and output be handled in the middle of work that never waits; true when the work should stop. */

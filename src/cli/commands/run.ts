@@ -68,7 +68,7 @@ export const run = command({
 
     // the trace: its rows are read as the engine asks for them
     const skipBadRows = wholeNumber('--skip-bad-rows', args['skip-bad-rows'], 0);
-    const trace = await openFor(pkg, args.trace, { skipBadRows, clock: args.clock });
+    const trace = await session.unlessInterrupted(openFor(pkg, args.trace, { skipBadRows, clock: args.clock }));
 
     // the files asked for are opened before anything is computed, so that a bad place costs no waiting
     const untilPs = parseUntil(args.until);
