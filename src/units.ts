@@ -39,7 +39,10 @@ function parse(text: string, units: Units, where: Where, what: string): number {
     const like = nearest(match[2], names);
     throw new InputError({
       where,
-      found: match[2] === '' ? `'${text}', a number without a unit` : `'${text}', whose unit '${match[2]}' is not one of ${what}`,
+      found:
+        match[2] === ''
+          ? `'${text}', a number without a unit`
+          : `'${text}', whose unit '${match[2]}' is not one of ${what}`,
       expected,
       hint: like === undefined ? undefined : `Did you mean '${match[1]} ${like}'?`,
     });
@@ -57,7 +60,8 @@ export const parseTime = (text: string, where: Where): number => parse(text, TIM
 /** Size in bytes. */
 export const parseBytes = (text: string, where: Where): number => parse(text, SIZE, where, 'a size');
 /** Clock frequency in Hz. */
-export const parseFrequency = (text: string, where: Where): number => parse(text, FREQUENCY, where, 'a clock frequency');
+export const parseFrequency = (text: string, where: Where): number =>
+  parse(text, FREQUENCY, where, 'a clock frequency');
 /** Transfers a second and lane. */
 export const parseTransfers = (text: string, where: Where): number => parse(text, TRANSFERS, where, 'a transfer rate');
 /** Compute rate in FLOP/s. */
@@ -65,7 +69,8 @@ export const parseFlopRate = (text: string, where: Where): number => parse(text,
 /** Length in mm. */
 export const parseLength = (text: string, where: Where): number => parse(text, LENGTH, where, 'a length');
 /** Temperature in degrees Celsius. */
-export const parseTemperature = (text: string, where: Where): number => parse(text, TEMPERATURE, where, 'a temperature');
+export const parseTemperature = (text: string, where: Where): number =>
+  parse(text, TEMPERATURE, where, 'a temperature');
 
 /** Work in FLOP; a plain number counts operations and needs no unit. */
 export function parseFlops(text: string, where: Where): number {
@@ -89,7 +94,8 @@ export function parseSeparation(text: string, where: Where): Separation {
   const clocks = /^(\d+)\s*ck$/.exec(text.trim());
   if (clocks !== null) return { ck: Number(clocks[1]), ps: 0 };
   const ps = parse(text, { ...TIME, ck: Number.NaN }, where, 'a time or a whole number of clocks');
-  if (Number.isNaN(ps)) throw new InputError({ where, found: `'${text}'`, expected: 'a whole number of clocks, for example 4 ck' });
+  if (Number.isNaN(ps))
+    throw new InputError({ where, found: `'${text}'`, expected: 'a whole number of clocks, for example 4 ck' });
   return { ck: 0, ps };
 }
 

@@ -1,7 +1,7 @@
 import { InputError } from '../errors.js';
 import type { MemoryGroup, TimingName } from './package.js';
-import type { Place } from './resolve.js';
 import type { Path } from './tree.js';
+import type { Place } from './values.js';
 
 /** Refuses timings that contradict each other or an organisation that cannot work, naming the rule that fails. */
 export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, path: Path, place: Place): void {
@@ -14,7 +14,20 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
       expected: text,
     });
   };
-  for (const name of ['tRC', 'tRAS', 'tRP', 'tRCDRD', 'tRCDWR', 'tCCD_S', 'tCCD_L', 'RL', 'WL', 'tREFI', 'tRFCab', 'tRFCpb'] as const) {
+  for (const name of [
+    'tRC',
+    'tRAS',
+    'tRP',
+    'tRCDRD',
+    'tRCDWR',
+    'tCCD_S',
+    'tCCD_L',
+    'RL',
+    'WL',
+    'tREFI',
+    'tRFCab',
+    'tRFCpb',
+  ] as const) {
     rule(ck(name) > 0, name, 'at least one clock', name);
   }
   // each is rounded up to clocks on its own, so the sum may come out one clock longer
@@ -25,7 +38,14 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
   rule(ck('tRRD_L') >= ck('tRRD_S'), 'tRRD_L', 'tRRD_L of at least tRRD_S', 'tRRD_L', 'tRRD_S');
   rule(ck('tFAW') >= ck('tRRD_S'), 'tFAW', 'tFAW of at least tRRD_S', 'tFAW', 'tRRD_S');
   rule(ck('tWTR_L') >= ck('tWTR_S'), 'tWTR_L', 'tWTR_L of at least tWTR_S', 'tWTR_L', 'tWTR_S');
-  rule(ck('RL') + o.burst_ck + ck('tRTW') >= ck('WL'), 'WL', 'a write burst that starts after the read burst before it: WL of at most RL + burst + tRTW', 'WL', 'RL', 'tRTW');
+  rule(
+    ck('RL') + o.burst_ck + ck('tRTW') >= ck('WL'),
+    'WL',
+    'a write burst that starts after the read burst before it: WL of at most RL + burst + tRTW',
+    'WL',
+    'RL',
+    'tRTW',
+  );
   if (ck('tCCD_S') < o.burst_ck) {
     throw new InputError({
       where: place([...path, 'timings', 'tCCD_S']),
@@ -34,14 +54,31 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
     });
   }
   if (refresh.mode === 'all-bank') {
-    rule(ck('tREFI') > ck('tRFCab') + ck('tRC'), 'tREFI', 'tREFI longer than tRFCab + tRC, or nothing but refresh happens', 'tREFI', 'tRFCab', 'tRC');
+    rule(
+      ck('tREFI') > ck('tRFCab') + ck('tRC'),
+      'tREFI',
+      'tREFI longer than tRFCab + tRC, or nothing but refresh happens',
+      'tREFI',
+      'tRFCab',
+      'tRC',
+    );
   }
   if (refresh.mode === 'per-bank') {
     const banks = o.bank_groups * o.banks_per_group * o.sids;
-    rule(ck('tREFI') / banks > ck('tRREFD'), 'tREFI', `tREFI / ${banks} banks longer than tRREFD, or refresh cannot keep up`, 'tREFI', 'tRREFD');
+    rule(
+      ck('tREFI') / banks > ck('tRREFD'),
+      'tREFI',
+      `tREFI / ${banks} banks longer than tRREFD, or refresh cannot keep up`,
+      'tREFI',
+      'tRREFD',
+    );
     rule(ck('tREFI') > ck('tRFCpb') + ck('tRC'), 'tREFI', 'tREFI longer than tRFCpb + tRC', 'tREFI', 'tRFCpb', 'tRC');
     if (o.bank_groups * o.banks_per_group > 32) {
-      throw new InputError({ where: place([...path, 'refresh', 'mode']), found: 'per-bank refresh of more than 32 banks a stack ID', expected: 'all-bank refresh' });
+      throw new InputError({
+        where: place([...path, 'refresh', 'mode']),
+        found: 'per-bank refresh of more than 32 banks a stack ID',
+        expected: 'all-bank refresh',
+      });
     }
   }
   if (o.bank_groups * o.banks_per_group * o.sids > 64 || o.bank_groups * o.sids > 32) {

@@ -1,4 +1,12 @@
-import { type Ceilings, capacityBytes, ceilings, refreshLoss, stackBytes, type UnloadedLatency, unloadedLatency } from './derive.js';
+import {
+  type Ceilings,
+  capacityBytes,
+  ceilings,
+  refreshLoss,
+  stackBytes,
+  type UnloadedLatency,
+  unloadedLatency,
+} from './derive.js';
 import { DEVICES } from './devices/index.js';
 import { domains } from './domains.js';
 import type { AddressMap, ComputeDie, Domain, Link, MemoryGroup, Package } from './package.js';
@@ -56,7 +64,10 @@ export function describePackage(pkg: Package): Description {
       return {
         ...group,
         clock_ps: clockPs,
-        clock_source: device === undefined || Math.abs(clockPs - 1e12 / frequencyOf(device.clock.value)) > 1e-6 ? 'package file' : device.clock.source,
+        clock_source:
+          device === undefined || Math.abs(clockPs - 1e12 / frequencyOf(device.clock.value)) > 1e-6
+            ? 'package file'
+            : device.clock.source,
         organisation_sources: Object.fromEntries(
           Object.entries(device?.organisation ?? {}).map(([name, { value, source }]) => [
             name,
@@ -89,13 +100,17 @@ function frequencyOf(text: string): number {
 function addressBits(pkg: Package): AddressBit[] {
   const { fields, xor } = pkg.addressMap;
   const bits: AddressBit[] = [];
-  for (let i = 0; i < Math.log2(pkg.memory[0].organisation.atom_bytes); i++) bits.push({ bit: bits.length, field: 'byte', folded_into: [] });
+  for (let i = 0; i < Math.log2(pkg.memory[0].organisation.atom_bytes); i++)
+    bits.push({ bit: bits.length, field: 'byte', folded_into: [] });
   const seen: Record<string, number> = {};
   for (const { name, bits: count } of fields) {
     for (let i = 0; i < count; i++) {
       const own = seen[name] ?? 0;
       seen[name] = own + 1;
-      const into = name === 'row' ? xor.filter((fold) => fold.rowBits.includes(own)).map((fold) => `${fold.target}.${fold.bit}`) : [];
+      const into =
+        name === 'row'
+          ? xor.filter((fold) => fold.rowBits.includes(own)).map((fold) => `${fold.target}.${fold.bit}`)
+          : [];
       bits.push({ bit: bits.length, field: `${name}.${own}`, folded_into: into });
     }
   }

@@ -2,7 +2,9 @@ import type { Domain, MemoryGroup, Package } from './package.js';
 
 /** Bytes of one stack. */
 export function stackBytes({ organisation: o }: MemoryGroup): number {
-  return o.channels * o.pseudo_channels * o.sids * o.bank_groups * o.banks_per_group * o.rows * o.columns * o.atom_bytes;
+  return (
+    o.channels * o.pseudo_channels * o.sids * o.bank_groups * o.banks_per_group * o.rows * o.columns * o.atom_bytes
+  );
 }
 
 /** Each compute die's own range of the address space: dies in order, one contiguous range each. */

@@ -1,5 +1,5 @@
 import { readFileSync } from 'node:fs';
-import { dirname, isAbsolute, join, resolve as absolute } from 'node:path';
+import { resolve as absolute, dirname, isAbsolute, join } from 'node:path';
 import { InputError, nearest, SystemError, type Where } from '../errors.js';
 import { checkPackage } from './check-package.js';
 import type { Package } from './package.js';
@@ -43,7 +43,11 @@ function extended(tree: Tree, file: string, chain: readonly string[]): Tree {
   const base = tree.kind === 'map' ? tree.entries.get('extends')?.value : undefined;
   if (base === undefined) return tree;
   if (base.kind !== 'scalar' || typeof base.value !== 'string') {
-    throw new InputError({ where: { ...base.where, path: 'extends' }, found: 'something other than a file name', expected: 'the name of a package file' });
+    throw new InputError({
+      where: { ...base.where, path: 'extends' },
+      found: 'something other than a file name',
+      expected: 'the name of a package file',
+    });
   }
   const target = isAbsolute(base.value) ? base.value : join(dirname(file), base.value);
   return merge(loadTree(target, chain, { ...base.where, path: 'extends' }), tree);
@@ -55,7 +59,12 @@ function readText(file: string, from?: Where): string {
   } catch (error) {
     const { code } = error as NodeJS.ErrnoException;
     const where = from ?? { file };
-    if (code === 'ENOENT') throw new InputError({ where, found: from ? `'${file}', a file that does not exist` : 'no such file', expected: 'a package file (YAML)' });
+    if (code === 'ENOENT')
+      throw new InputError({
+        where,
+        found: from ? `'${file}', a file that does not exist` : 'no such file',
+        expected: 'a package file (YAML)',
+      });
     if (code === 'EISDIR') throw new InputError({ where, found: 'a directory', expected: 'a package file (YAML)' });
     throw new SystemError(`${file}: cannot be read (${code ?? String(error)})`);
   }
@@ -65,7 +74,12 @@ function readText(file: string, from?: Where): string {
 function override(tree: Tree, text: string): Tree {
   const where: Where = { file: `--set ${text}` };
   const at = text.indexOf('=');
-  if (at <= 0) throw new InputError({ where, found: `'${text}'`, expected: 'path=value, for example memory.0.controller.read_queue=32' });
+  if (at <= 0)
+    throw new InputError({
+      where,
+      found: `'${text}'`,
+      expected: 'path=value, for example memory.0.controller.read_queue=32',
+    });
   const path = text.slice(0, at).split('.');
   const value = parseScalar(text.slice(at + 1), where);
   return withValue(tree, path, value, (step, below) => {
@@ -73,8 +87,12 @@ function override(tree: Tree, text: string): Tree {
     return new InputError({
       where,
       found: `no '${step}' on the way to ${path.join('.')}`,
-      expected: known.length > 0 ? `one of ${known.join(', ')}, or an item's name` : 'a path to a key of the package file',
-      hint: nearest(String(step), keysAt([])) === undefined ? undefined : `Did you mean '${nearest(String(step), keysAt([]))}'?`,
+      expected:
+        known.length > 0 ? `one of ${known.join(', ')}, or an item's name` : 'a path to a key of the package file',
+      hint:
+        nearest(String(step), keysAt([])) === undefined
+          ? undefined
+          : `Did you mean '${nearest(String(step), keysAt([]))}'?`,
     });
   });
 }
@@ -90,6 +108,8 @@ function parseScalar(text: string, where: Where): Tree {
 function withPlace(tree: Tree, where: Where): Tree {
   if (tree.kind === 'scalar') return { ...tree, where };
   if (tree.kind === 'list') return { ...tree, where, items: tree.items.map((item) => withPlace(item, where)) };
-  const entries = new Map([...tree.entries].map(([key, { value }]) => [key, { key: where, value: withPlace(value, where) }]));
+  const entries = new Map(
+    [...tree.entries].map(([key, { value }]) => [key, { key: where, value: withPlace(value, where) }]),
+  );
   return { ...tree, where, entries };
 }

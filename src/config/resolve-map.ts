@@ -1,8 +1,8 @@
 import { InputError } from '../errors.js';
 import { formatBytes, parseBytes } from '../units.js';
 import type { AddressMap, FieldName, MemoryGroup } from './package.js';
-import { type Place, whole } from './resolve.js';
 import type { PackageFile } from './schema.js';
+import { type Place, whole } from './values.js';
 
 type XorTarget = AddressMap['xor'][number]['target'];
 
@@ -58,7 +58,11 @@ export function resolveMap(file: PackageFile['address_map'], memory: MemoryGroup
     });
   }
   if (fields.reduce((sum, field) => sum + field.bits, 0) > 31) {
-    throw new InputError({ where: place([path, 'fields']), found: 'more than 31 bits', expected: 'at most 31 bits of atoms in one interleave unit' });
+    throw new InputError({
+      where: place([path, 'fields']),
+      found: 'more than 31 bits',
+      expected: 'at most 31 bits of atoms in one interleave unit',
+    });
   }
   return { granuleBytes, interleave: file.interleave, fields, xor: folding(file, memory, counts, place) };
 }

@@ -4,10 +4,10 @@ import { checkMemory } from './check.js';
 import { DEVICES } from './devices/index.js';
 import type { Controller, MemoryGroup, Organisation, Timing, TimingName } from './package.js';
 import { TIMING_NAMES } from './package.js';
-import { negative, type Place, positive, unknownName } from './resolve.js';
 import type { PackageFile } from './schema.js';
 import { toClocks } from './timing.js';
 import type { Path } from './tree.js';
+import { negative, type Place, positive, unknownName } from './values.js';
 
 type MemoryFile = PackageFile['memory'][number];
 
@@ -53,7 +53,8 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
     device: file.device,
     clockPs,
     peakBytesPerS:
-      (organisation.channels * organisation.pseudo_channels * organisation.atom_bytes * 1e12) / (organisation.burst_ck * clockPs),
+      (organisation.channels * organisation.pseudo_channels * organisation.atom_bytes * 1e12) /
+      (organisation.burst_ck * clockPs),
     organisation,
     timings,
     activateWindowScope: file.activate_window_scope ?? device.activateWindowScope.value,

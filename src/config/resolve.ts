@@ -1,21 +1,23 @@
 import { createHash } from 'node:crypto';
-import { InputError, nearest, type Where } from '../errors.js';
-import { parseBytes, parseFlopRate, parseFrequency, parseLength, parseTemperature, parseTime, parseTransfers } from '../units.js';
+import { InputError, type Where } from '../errors.js';
+import { parseBytes, parseFlopRate, parseFrequency, parseLength, parseTime, parseTransfers } from '../units.js';
+import type { ComputeDie, Link, MemoryGroup, Package } from './package.js';
 import { resolveMap } from './resolve-map.js';
 import { resolveMemory } from './resolve-memory.js';
-import type { ComputeDie, Link, MemoryGroup, Package } from './package.js';
 import type { PackageFile } from './schema.js';
 import { locate, type Path, type Tree } from './tree.js';
-
-/** Where each value of a document stands, for the errors of everything that resolves it. */
-export type Place = (path: Path) => Where;
+import { negative, type Place, positive, unknownName, whole } from './values.js';
 
 /** Turns a valid document into a Package: units to numbers, names to indices, presets filled in. */
 export function resolve(file: PackageFile, tree: Tree, fileName: string): Package {
   const place: Place = (path) => locate(tree, path);
   const memory = file.memory.map((group, i) => resolveMemory(group, ['memory', i], place));
   const dies = file.compute.map((die, i) => resolveDie(die, ['compute', i], place));
-  distinct(file.compute.map((die) => die.name), 'compute', place);
+  distinct(
+    file.compute.map((die) => die.name),
+    'compute',
+    place,
+  );
   const links = resolveLinks(file.links, file, memory, place);
   const resolved = {
     name: file.name,
@@ -38,7 +40,11 @@ function resolveDie(die: PackageFile['compute'][number], path: Path, place: Plac
     window: die.window,
     issuePerClock: die.issue_per_clock,
     buffering: die.buffering,
-    requestBytes: whole(positive(parseBytes(die.request, at('request')), die.request, at('request')), at('request'), 'bytes'),
+    requestBytes: whole(
+      positive(parseBytes(die.request, at('request')), die.request, at('request')),
+      at('request'),
+      'bytes',
+    ),
     peakFlops: Object.fromEntries(
       Object.entries(die.peak).map(([format, rate]) => [
         format,
@@ -50,14 +56,29 @@ function resolveDie(die: PackageFile['compute'][number], path: Path, place: Plac
 }
 
 /** Expands `hbm.0-2` to one link a stack and sorts by stack; every stack must end up with exactly one. */
-function resolveLinks(links: PackageFile['links'], file: PackageFile, memory: readonly MemoryGroup[], place: Place): Link[] {
+function resolveLinks(
+  links: PackageFile['links'],
+  file: PackageFile,
+  memory: readonly MemoryGroup[],
+  place: Place,
+): Link[] {
   const [group] = memory;
   const byStack = new Map<number, Link>();
-  distinct(links.map((link) => link.name), 'links', place);
+  distinct(
+    links.map((link) => link.name),
+    'links',
+    place,
+  );
   links.forEach((link, i) => {
     const path = ['links', i];
     const die = file.compute.findIndex((candidate) => candidate.name === link.from);
-    if (die < 0) throw unknownName(link.from, file.compute.map((c) => c.name), 'a compute die', place([...path, 'from']));
+    if (die < 0)
+      throw unknownName(
+        link.from,
+        file.compute.map((c) => c.name),
+        'a compute die',
+        place([...path, 'from']),
+      );
     const stacks = stacksOf(link.to, group, place([...path, 'to']));
     for (const stack of stacks) {
       const taken = byStack.get(stack);
@@ -91,7 +112,14 @@ function resolveLinks(links: PackageFile['links'], file: PackageFile, memory: re
   return [...byStack.values()].sort((a, b) => a.stack - b.stack);
 }
 
-function resolveLink(link: PackageFile['links'][number], name: string, die: number, stack: number, path: Path, place: Place): Link {
+function resolveLink(
+  link: PackageFile['links'][number],
+  name: string,
+  die: number,
+  stack: number,
+  path: Path,
+  place: Place,
+): Link {
   const at = (key: string): Where => place([...path, key]);
   const size = (key: 'flit' | 'flit_overhead' | 'request_header' | 'response_header' | 'ack' | 'landing'): number => {
     const bytes = whole(parseBytes(link[key], at(key)), at(key), 'bytes');
@@ -144,35 +172,13 @@ function stacksOf(text: string, group: MemoryGroup, where: Where): number[] {
 function distinct(names: readonly string[], list: string, place: Place): void {
   names.forEach((name, i) => {
     if (names.indexOf(name) === i) return;
-    throw new InputError({ where: place([list, i, 'name']), found: `a second '${name}'`, expected: 'a name of its own' });
+    throw new InputError({
+      where: place([list, i, 'name']),
+      found: `a second '${name}'`,
+      expected: 'a name of its own',
+    });
   });
 }
-
-export function unknownName(name: string, known: readonly string[], what: string, where: Where): InputError {
-  const like = nearest(name, known);
-  return new InputError({
-    where,
-    found: `'${name}'`,
-    expected: `${what}: ${known.join(', ')}`,
-    hint: like === undefined ? undefined : `Did you mean '${like}'?`,
-  });
-}
-
-export function positive(value: number, text: string, where: Where): number {
-  if (value > 0) return value;
-  throw new InputError({ where, found: `'${text}'`, expected: 'more than zero' });
-}
-
-export function negative(text: string, where: Where): InputError {
-  return new InputError({ where, found: `'${text}'`, expected: 'zero or more' });
-}
-
-export function whole(value: number, where: Where, unit: string): number {
-  if (Number.isInteger(value)) return value;
-  throw new InputError({ where, found: `${value} ${unit}`, expected: `a whole number of ${unit}` });
-}
-
-export const celsius = parseTemperature;
 
 function freeze<T>(value: T): T {
   if (typeof value === 'object' && value !== null) {

@@ -26,17 +26,38 @@ const organisation = z
 const timings = z
   .strictObject(
     Object.fromEntries(
-      TIMING_NAMES.map((name) => [name, quantity(`${name}: a time (14 ns), clocks (4 ck) or max(4 ck, 2.5 ns)`).optional()]),
+      TIMING_NAMES.map((name) => [
+        name,
+        quantity(`${name}: a time (14 ns), clocks (4 ck) or max(4 ck, 2.5 ns)`).optional(),
+      ]),
     ) as Record<(typeof TIMING_NAMES)[number], z.ZodOptional<z.ZodString>>,
   )
-  .meta({ description: 'overrides of the device’s timings; a time in ns is rounded up to clocks (tREFI down), clocks stay' });
+  .meta({
+    description: 'overrides of the device’s timings; a time in ns is rounded up to clocks (tREFI down), clocks stay',
+  });
 
 const refresh = z
   .strictObject({
-    mode: z.enum(['all-bank', 'per-bank', 'off']).default('all-bank').meta({ description: 'which refresh command is used' }),
-    scope: z.enum(['pseudo_channel', 'sid']).optional().meta({ description: 'what one REFab closes; default: the device’s' }),
-    postpone: z.int().min(0).max(8).optional().meta({ description: 'refreshes that may be owed at once; default: the device’s limit' }),
-    pull_in: z.int().min(0).max(8).optional().meta({ description: 'refreshes that may be done ahead while idle; default: the device’s limit' }),
+    mode: z
+      .enum(['all-bank', 'per-bank', 'off'])
+      .default('all-bank')
+      .meta({ description: 'which refresh command is used' }),
+    scope: z
+      .enum(['pseudo_channel', 'sid'])
+      .optional()
+      .meta({ description: 'what one REFab closes; default: the device’s' }),
+    postpone: z
+      .int()
+      .min(0)
+      .max(8)
+      .optional()
+      .meta({ description: 'refreshes that may be owed at once; default: the device’s limit' }),
+    pull_in: z
+      .int()
+      .min(0)
+      .max(8)
+      .optional()
+      .meta({ description: 'refreshes that may be done ahead while idle; default: the device’s limit' }),
     temperature: quantity('junction temperature; above 85 C tREFI is halved').default('60 C'),
   })
   .prefault({})
@@ -46,10 +67,15 @@ const controller = z
   .strictObject({
     read_queue: count('read entries per pseudo-channel').default(64),
     write_queue: count('write entries per pseudo-channel').default(64),
-    scheduler: z.enum(['fcfs', 'fr-fcfs']).default('fr-fcfs').meta({ description: 'first come first served, or ready row hits first (Rixner et al., 2000)' }),
+    scheduler: z
+      .enum(['fcfs', 'fr-fcfs'])
+      .default('fr-fcfs')
+      .meta({ description: 'first come first served, or ready row hits first (Rixner et al., 2000)' }),
     hit_cap: count('column commands a row may serve since its ACT while an older conflict waits').default(32),
     age_bound: quantity('an entry older than this goes first: nothing starves').default('2 us'),
-    page: z.enum(['open', 'closed', 'timeout']).default('open').meta({ description: 'when rows are closed: on conflict, by auto-precharge when no hit waits, or after page_timeout' }),
+    page: z.enum(['open', 'closed', 'timeout']).default('open').meta({
+      description: 'when rows are closed: on conflict, by auto-precharge when no hit waits, or after page_timeout',
+    }),
     page_timeout: quantity('time without a hit after which a row is closed (page: timeout)').default('200 ns'),
     drain_high: count('write entries at which draining starts; default: three quarters of write_queue').optional(),
     drain_low: count('write entries at which draining ends; default: a quarter of write_queue', 0).optional(),
@@ -66,7 +92,10 @@ const memory = z
     clock: quantity('DRAM clock frequency; default: the device’s').optional(),
     organisation: organisation.optional(),
     timings: timings.optional(),
-    activate_window_scope: z.enum(['pseudo_channel', 'sid']).optional().meta({ description: 'where tRRD and tFAW hold; default: the device’s' }),
+    activate_window_scope: z
+      .enum(['pseudo_channel', 'sid'])
+      .optional()
+      .meta({ description: 'where tRRD and tFAW hold; default: the device’s' }),
     refresh,
     controller,
     base_die: z
@@ -86,9 +115,17 @@ const compute = z
     engines: count('independent in-order issue streams'),
     window: count('outstanding requests per engine').default(128),
     issue_per_clock: z.int().min(1).max(16).default(1).meta({ description: 'requests an engine issues a clock' }),
-    buffering: z.int().min(1).max(64).default(2).meta({ description: 'tiles that may be loading or waiting at once, the computing one included' }),
+    buffering: z
+      .int()
+      .min(1)
+      .max(64)
+      .default(2)
+      .meta({ description: 'tiles that may be loading or waiting at once, the computing one included' }),
     request: quantity('longest request an engine sends').default('256 B'),
-    peak: z.record(z.string(), z.string()).default({}).meta({ description: 'peak compute rate of the die per number format, for example bf16: 400 TFLOP/s' }),
+    peak: z
+      .record(z.string(), z.string())
+      .default({})
+      .meta({ description: 'peak compute rate of the die per number format, for example bf16: 400 TFLOP/s' }),
     edge: quantity('die edge available for links, for example 32 mm').optional(),
   })
   .meta({ description: 'one compute die' });
@@ -106,7 +143,9 @@ const link = z
     response_header: quantity('bytes of the header of read data').default('16 B'),
     ack: quantity('bytes of a write acknowledgement').default('8 B'),
     latency: quantity('one way, after serialisation').default('2 ns'),
-    landing: quantity('buffer that read data lands in, in the base die’s egress and the receiver together').default('64 KiB'),
+    landing: quantity('buffer that read data lands in, in the base die’s egress and the receiver together').default(
+      '64 KiB',
+    ),
   })
   .meta({ description: 'full-duplex die-to-die links from one compute die to one or more stacks' });
 
@@ -121,14 +160,19 @@ const addressMap = z
     fields: z
       .array(z.string().regex(/^(column|bank_group|bank|sid|row|pseudo_channel):\d+$/, 'field:bits'))
       .min(1)
-      .meta({ description: 'bit fields inside a unit, lowest first, as field:bits; a field may come back for its higher bits' }),
+      .meta({
+        description: 'bit fields inside a unit, lowest first, as field:bits; a field may come back for its higher bits',
+      }),
     xor: z
       .record(
         z.string().regex(new RegExp(`^(${XOR_TARGETS.join('|')})\\.\\d+$`), 'field.bit'),
         z.array(z.string().regex(/^row\.\d+$/, 'row.bit')).min(1),
       )
       .default({})
-      .meta({ description: 'folding: a bit of bank_group, bank, sid, channel or pseudo_channel, XORed with row bits (Zhang, Zhu and Zhang, 2000)' }),
+      .meta({
+        description:
+          'folding: a bit of bank_group, bank, sid, channel or pseudo_channel, XORed with row bits (Zhang, Zhu and Zhang, 2000)',
+      }),
   })
   .meta({ description: 'address to stack, channel, bank, row and column' });
 
@@ -137,7 +181,10 @@ export const packageFile = z
     penstock: z.literal(1).meta({ description: 'format version' }),
     extends: z.string().optional().meta({ description: 'another package file that this one is laid over' }),
     name: z.string().min(1).meta({ description: 'name of the package' }),
-    caution: z.string().default('').meta({ description: 'a sentence that reports repeat, for example that the data is invented' }),
+    caution: z
+      .string()
+      .default('')
+      .meta({ description: 'a sentence that reports repeat, for example that the data is invented' }),
     compute: z.array(compute).min(1).meta({ description: 'compute dies' }),
     memory: z.array(memory).min(1).max(1).meta({ description: 'memory; one kind for now' }),
     links: z.array(link).min(1).meta({ description: 'die-to-die links; every stack has exactly one' }),

@@ -34,7 +34,11 @@ export function parseTree(text: string, file: string): Tree {
     });
   }
   if (document.contents === null) {
-    throw new InputError({ where: { file }, found: 'an empty file', expected: 'a package: a map with the keys penstock, name, compute …' });
+    throw new InputError({
+      where: { file },
+      found: 'an empty file',
+      expected: 'a package: a map with the keys penstock, name, compute …',
+    });
   }
   const place = (node: Node | null | undefined): Where => {
     const { line, col } = lines.linePos(node?.range?.[0] ?? 0);
@@ -45,7 +49,11 @@ export function parseTree(text: string, file: string): Tree {
     if (isAlias(node)) {
       const target = node.resolve(document);
       if (target === undefined) {
-        throw new InputError({ where, found: `alias *${node.source}`, expected: 'an anchor of that name earlier in the file' });
+        throw new InputError({
+          where,
+          found: `alias *${node.source}`,
+          expected: 'an anchor of that name earlier in the file',
+        });
       }
       return convert(target);
     }
@@ -53,7 +61,10 @@ export function parseTree(text: string, file: string): Tree {
       const entries = new Map<string, Entry>();
       for (const pair of node.items) {
         const key = String(isScalar(pair.key) ? pair.key.value : pair.key);
-        const value = pair.value === null ? { kind: 'scalar' as const, where: place(pair.key as Node), value: null } : convert(pair.value as Node);
+        const value =
+          pair.value === null
+            ? { kind: 'scalar' as const, where: place(pair.key as Node), value: null }
+            : convert(pair.value as Node);
         entries.set(key, { key: place(pair.key as Node), value });
       }
       return { kind: 'map', where, entries };
@@ -63,7 +74,11 @@ export function parseTree(text: string, file: string): Tree {
   };
   const tree = convert(document.contents as Node);
   if (tree.kind !== 'map') {
-    throw new InputError({ where: tree.where, found: `a ${tree.kind}`, expected: 'a map with the keys penstock, name, compute …' });
+    throw new InputError({
+      where: tree.where,
+      found: `a ${tree.kind}`,
+      expected: 'a map with the keys penstock, name, compute …',
+    });
   }
   return tree;
 }
@@ -109,13 +124,21 @@ export function locate(tree: Tree, path: Path, key = false): Where {
 }
 
 /** A copy of the tree with one value replaced or added; the steps before the last must exist, or `missing` is thrown. */
-export function withValue(tree: Tree, path: Path, value: Tree, missing: (step: string | number, at: Tree) => Error): Tree {
+export function withValue(
+  tree: Tree,
+  path: Path,
+  value: Tree,
+  missing: (step: string | number, at: Tree) => Error,
+): Tree {
   const [step, ...rest] = path;
   if (step === undefined) return value;
   if (tree.kind === 'list') {
     const index = listIndex(tree.items, step);
     if (index < 0) throw missing(step, tree);
-    return { ...tree, items: tree.items.map((item, i) => (i === index ? withValue(item, rest, value, missing) : item)) };
+    return {
+      ...tree,
+      items: tree.items.map((item, i) => (i === index ? withValue(item, rest, value, missing) : item)),
+    };
   }
   if (tree.kind !== 'map') throw missing(step, tree);
   const name = String(step);

@@ -1,4 +1,4 @@
-import { z } from 'zod';
+import type { z } from 'zod';
 import { InputError, nearest } from '../errors.js';
 import { type PackageFile, packageFile } from './schema.js';
 import { locate, type Path, plain, type Tree } from './tree.js';
@@ -25,15 +25,35 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
       });
     }
     case 'invalid_value':
-      return new InputError({ where: locate(tree, path), found, expected: issue.values.map((value) => String(value)).join(' or ') });
+      return new InputError({
+        where: locate(tree, path),
+        found,
+        expected: issue.values.map((value) => String(value)).join(' or '),
+      });
     case 'too_small':
-      return new InputError({ where: locate(tree, path), found, expected: `${issue.origin === 'array' ? 'a list of at least' : 'at least'} ${issue.minimum}` });
+      return new InputError({
+        where: locate(tree, path),
+        found,
+        expected: `${issue.origin === 'array' ? 'a list of at least' : 'at least'} ${issue.minimum}`,
+      });
     case 'too_big':
-      return new InputError({ where: locate(tree, path), found, expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${issue.maximum}` });
+      return new InputError({
+        where: locate(tree, path),
+        found,
+        expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${issue.maximum}`,
+      });
     case 'invalid_format':
-      return new InputError({ where: locate(tree, path), found, expected: issue.message === 'field:bits' ? 'a field and its bits, for example bank_group:2' : issue.message });
+      return new InputError({
+        where: locate(tree, path),
+        found,
+        expected: issue.message === 'field:bits' ? 'a field and its bits, for example bank_group:2' : issue.message,
+      });
     case 'invalid_key':
-      return new InputError({ where: locate(tree, path, true), found: `key '${String(path[path.length - 1])}'`, expected: 'a field and a bit of it, for example bank_group.0' });
+      return new InputError({
+        where: locate(tree, path, true),
+        found: `key '${String(path[path.length - 1])}'`,
+        expected: 'a field and a bit of it, for example bank_group.0',
+      });
     default: {
       const expected = 'expected' in issue ? wording(String(issue.expected)) : issue.message;
       return new InputError({ where: locate(tree, path), found, expected });
@@ -69,7 +89,11 @@ function valueAt(tree: Tree, path: Path): unknown {
 export function keysAt(path: Path): string[] {
   let at: z.core.$ZodType | undefined = packageFile;
   for (const step of path) {
-    const def = unwrap(at)._zod.def as { shape?: Record<string, z.core.$ZodType>; element?: z.core.$ZodType; valueType?: z.core.$ZodType };
+    const def = unwrap(at)._zod.def as {
+      shape?: Record<string, z.core.$ZodType>;
+      element?: z.core.$ZodType;
+      valueType?: z.core.$ZodType;
+    };
     at = def.shape?.[String(step)] ?? def.element ?? def.valueType;
     if (at === undefined) return [];
   }

@@ -227,7 +227,14 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
   K[BANK_BASE] = PR_WORDS * (system.total + 1);
   K[SLOT_BASE] = K[BANK_BASE] + BR_WORDS * K[BANKS] * system.total;
   const used = K[SLOT_BASE] + SLOT_WORDS * K[DEPTH] * system.total;
-  if (system.total > MAX_PSEUDO || used > M.length || K[DEPTH] * system.total > slotNumber.length || K[BANKS] > 64 || K[GROUPS] > 32 || K[SIDS] > 4) {
+  if (
+    system.total > MAX_PSEUDO ||
+    used > M.length ||
+    K[DEPTH] * system.total > slotNumber.length ||
+    K[BANKS] > 64 ||
+    K[GROUPS] > 32 ||
+    K[SIDS] > 4
+  ) {
     throw new RangeError(
       `the package is larger than the engine's tables: at most ${MAX_PSEUDO} pseudo-channels of 64 banks, 32 bank groups and 4 stack IDs, and ${slotNumber.length} queue entries in all`,
     );
@@ -281,8 +288,10 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
   ORIGIN[EPOCH] = 0;
   active = 0;
   ORIGIN[WRITE_END] = 0;
-  for (const counter of [channelNow, columnBus, rowBus, lastPc, queued, isActive, reads, writes, activates]) counter.fill(0);
-  for (const counter of [precharges, refreshesAll, refreshesBank, rowHits, rowMisses, rowConflicts, forwarded]) counter.fill(0);
+  for (const counter of [channelNow, columnBus, rowBus, lastPc, queued, isActive, reads, writes, activates])
+    counter.fill(0);
+  for (const counter of [precharges, refreshesAll, refreshesBank, rowHits, rowMisses, rowConflicts, forwarded])
+    counter.fill(0);
   for (const counter of [occupancy, residence, entries, deepest]) counter.fill(0);
   resetAttribution(system.total);
   for (let p = 0; p < system.total; p++) layOut(p, system.total, controller.readQueue);
@@ -400,7 +409,16 @@ function admit(pr: number, t: number): void {
     M[pr + SINCE] = t;
     M[pr + CAUSE] = M[slot + FLAGS] >> 8;
   }
-  if (op === 1) answerReady(p, M[slot + HANDLE], ACKNOWLEDGEMENT, t + ORIGIN[EPOCH], t + ORIGIN[EPOCH], t + ORIGIN[EPOCH], t + K[PIPELINE] + ORIGIN[EPOCH]);
+  if (op === 1)
+    answerReady(
+      p,
+      M[slot + HANDLE],
+      ACKNOWLEDGEMENT,
+      t + ORIGIN[EPOCH],
+      t + ORIGIN[EPOCH],
+      t + ORIGIN[EPOCH],
+      t + K[PIPELINE] + ORIGIN[EPOCH],
+    );
   place(pr, p, slot, op, t);
 }
 
@@ -412,7 +430,15 @@ function place(pr: number, p: number, slot: number, op: number, t: number): void
     if (older !== 0) {
       if (op === 0 && covers(older, slot)) {
         forwarded[p]++;
-        answerReady(p, M[slot + HANDLE], FORWARDED, M[slot + ARRIVED] + ORIGIN[EPOCH], t + ORIGIN[EPOCH], t + ORIGIN[EPOCH], t + K[PIPELINE] + ORIGIN[EPOCH]);
+        answerReady(
+          p,
+          M[slot + HANDLE],
+          FORWARDED,
+          M[slot + ARRIVED] + ORIGIN[EPOCH],
+          t + ORIGIN[EPOCH],
+          t + ORIGIN[EPOCH],
+          t + K[PIPELINE] + ORIGIN[EPOCH],
+        );
         free(pr, p, slot, op, t);
         return;
       }
@@ -890,12 +916,31 @@ function closed(pr: number, br: number, t: number): void {
   if (K[PAGE] === 2) forgetOpen(pr, br);
 }
 
-function log(to: CommandSink, t: number, p: number, br: number, row: number, column: number, command: number, slot: number): void {
+function log(
+  to: CommandSink,
+  t: number,
+  p: number,
+  br: number,
+  row: number,
+  column: number,
+  command: number,
+  slot: number,
+): void {
   const group = M[br + GROUP];
   const perSid = K[GROUPS] / K[SIDS];
   const sid = Math.floor(group / perSid);
   const number = slot === 0 ? -1 : slotNumber[(slot - K[SLOT_BASE]) / SLOT_WORDS];
-  to(t + ORIGIN[EPOCH], p, sid, group - sid * perSid, M[br + BANK_INDEX] % K[BANKS_PER_GROUP], row, column, command, number);
+  to(
+    t + ORIGIN[EPOCH],
+    p,
+    sid,
+    group - sid * perSid,
+    M[br + BANK_INDEX] % K[BANKS_PER_GROUP],
+    row,
+    column,
+    command,
+    number,
+  );
 }
 
 // ---- finish ----------------------------------------------------------------------------------------------------------------
@@ -922,7 +967,15 @@ function finish(pr: number, p: number, slot: number, op: number, t: number, data
   countMoved(M[slot + KERNEL], op, M[slot + ATOMS], t + ORIGIN[EPOCH]);
   if (op === 0) {
     const first = M[slot + FIRST] + ORIGIN[EPOCH];
-    answerReady(p, M[slot + HANDLE], DATA, M[slot + ARRIVED] + ORIGIN[EPOCH], first, M[slot + FIRST_COLUMN] + ORIGIN[EPOCH], dataEnd + ORIGIN[EPOCH]);
+    answerReady(
+      p,
+      M[slot + HANDLE],
+      DATA,
+      M[slot + ARRIVED] + ORIGIN[EPOCH],
+      first,
+      M[slot + FIRST_COLUMN] + ORIGIN[EPOCH],
+      dataEnd + ORIGIN[EPOCH],
+    );
   } else if (dataEnd + ORIGIN[EPOCH] > ORIGIN[WRITE_END]) {
     ORIGIN[WRITE_END] = dataEnd + ORIGIN[EPOCH];
   }
@@ -1135,7 +1188,8 @@ function prechargeAll(pr: number, p: number, unit: number, channel: number, t: n
   if (K[ONE_BUS] === 1) columnBus[channel] = t + K[PRE_HOLD];
   if (sink !== null) sink(t + ORIGIN[EPOCH], p, sid, -1, -1, -1, -1, COMMAND.PREA, -1);
   const first = bankRecord(p, (unit * K[BANKS]) / K[REF_UNITS]);
-  for (let br = first; br < first + (K[BANKS] / K[REF_UNITS]) * BR_WORDS; br += BR_WORDS) if (M[br + OPEN] >= 0) closed(pr, br, t);
+  for (let br = first; br < first + (K[BANKS] / K[REF_UNITS]) * BR_WORDS; br += BR_WORDS)
+    if (M[br + OPEN] >= 0) closed(pr, br, t);
   M[pr + PPD_READY] = t + K[PRE_TO_PRE];
   M[pr + DIRTY + 2] = 1;
 }
@@ -1362,7 +1416,22 @@ function shiftTimes(p: number, shift: number): void {
   const later = (at: number): void => {
     if (M[at] !== UNSET && M[at] !== FAR) M[at] = Math.max(M[at] - shift, UNSET + 1);
   };
-  for (const field of [TIME + 1, TIME + 2, TIME + 3, LAST_OF, LAST_OF + 1, PPD_READY, DATA_END, SINCE, REF_END, TICK, REF_TIME, LAST_COLUMN, OCC_AT, WANTED_AT]) {
+  for (const field of [
+    TIME + 1,
+    TIME + 2,
+    TIME + 3,
+    LAST_OF,
+    LAST_OF + 1,
+    PPD_READY,
+    DATA_END,
+    SINCE,
+    REF_END,
+    TICK,
+    REF_TIME,
+    LAST_COLUMN,
+    OCC_AT,
+    WANTED_AT,
+  ]) {
     later(pr + field);
   }
   for (let u = 0; u < K[REF_UNITS]; u++) {
@@ -1377,7 +1446,16 @@ function shiftTimes(p: number, shift: number): void {
   }
   for (let b = 0; b < K[BANKS]; b++) {
     const br = bankRecord(p, b);
-    for (const field of [ACT_READY, PRE_READY, BANK_COL_READY, BANK_COL_READY + 1, ACT_WANTED, ACT_WINDOW, BANK_REF_END, BANK_LAST]) {
+    for (const field of [
+      ACT_READY,
+      PRE_READY,
+      BANK_COL_READY,
+      BANK_COL_READY + 1,
+      ACT_WANTED,
+      ACT_WINDOW,
+      BANK_REF_END,
+      BANK_LAST,
+    ]) {
       later(br + field);
     }
   }

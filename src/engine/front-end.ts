@@ -7,8 +7,8 @@ import { sendToChannel } from './channel.js';
 import { edgeAtOrAfter, edgePs, nextCreditEdge, takeEdge, takePair } from './credits.js';
 import { ACKNOWLEDGEMENT, FORWARDED } from './egress.js';
 import { STACK_CLASSES } from './recording.js';
-import * as at from './request-records.js';
 import type { Requests } from './request-records.js';
+import * as at from './request-records.js';
 import type { Samples } from './samples.js';
 import type { Timers } from './timers.js';
 import type { Runnable, Work } from './work.js';
@@ -168,7 +168,8 @@ export class FrontEnd {
     // a die that slept may be woken by another: never at an edge before that
     let from = this.dueCountsFrom[die];
     if (edgePs(die, from) < this.nowPs) from = edgeAtOrAfter(die, this.nowPs);
-    for (let e = this.firstEngine[die]; e < this.firstEngine[die + 1]; e++) if (this.runnable.flags[e] === 1) return from;
+    for (let e = this.firstEngine[die]; e < this.firstEngine[die + 1]; e++)
+      if (this.runnable.flags[e] === 1) return from;
     let ps = this.timers.next(die);
     for (const stack of this.stacksOfDie[die]) {
       const head = this.upHead[stack];

@@ -149,7 +149,8 @@ export class KernelWork implements Work {
     const engine = Math.floor(context / this.streams);
     this.outstanding[context * 2 + op]--;
     if (op === READ) {
-      if (this.walks[context * 2].chained && this.outstanding[context * 2] === 0) this.hold(context * 2, now, FOR_WINDOW);
+      if (this.walks[context * 2].chained && this.outstanding[context * 2] === 0)
+        this.hold(context * 2, now, FOR_WINDOW);
       if (--this.tileLoads[tag] === 0) this.compute(engine, now);
     }
     this.finishContext(context, now);

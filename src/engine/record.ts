@@ -19,7 +19,8 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
   const system = systemOf(pkg);
   const memory = memoryOf(pkg);
   const counters = channelCounters();
-  const lane = (both: Float64Array, op: number): Float64Array => Float64Array.from({ length: system.total }, (_, p) => both[p * 2 + op]);
+  const lane = (both: Float64Array, op: number): Float64Array =>
+    Float64Array.from({ length: system.total }, (_, p) => both[p * 2 + op]);
   const slices = timeline();
   const stack = bandwidthStack();
   const kernels = work.kernels.map((kernel, k): KernelRecord => {
@@ -45,13 +46,27 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
     check('requests issued are answered', front.answered, front.issued);
     const atoms = sum(counters.reads) + sum(counters.writes);
     check('atoms sent cross a data bus or are forwarded', atoms + front.atomsForwarded, front.atomsSent);
-    check('atoms of kernels are those of the data buses', kernels.reduce((n, k) => n + k.movedReadBytes + k.movedWriteBytes, 0), atoms * system.atomBytes);
+    check(
+      'atoms of kernels are those of the data buses',
+      kernels.reduce((n, k) => n + k.movedReadBytes + k.movedWriteBytes, 0),
+      atoms * system.atomBytes,
+    );
     check('no request is left in a queue', counters.queued, 0);
     // Little's law in its integral form: time integral of the number present = sum of the times spent there
-    check("Little's law, request windows (request x ps)", sum(front.windowPs), front.residencePs, 1e-9 * front.residencePs);
+    check(
+      "Little's law, request windows (request x ps)",
+      sum(front.windowPs),
+      front.residencePs,
+      1e-9 * front.residencePs,
+    );
     for (const [op, name] of ['read', 'write'].entries()) {
       const spent = sum(lane(counters.residence, op));
-      check(`Little's law, ${name} queues (entry x half clocks)`, sum(lane(counters.occupancy, op)), spent, 1e-9 * spent);
+      check(
+        `Little's law, ${name} queues (entry x half clocks)`,
+        sum(lane(counters.occupancy, op)),
+        spent,
+        1e-9 * spent,
+      );
     }
   }
   if (ending.attribution) {

@@ -35,7 +35,12 @@ const WINDOWS_PER_BREATH = 512; // windows between two looks at the outside worl
  * request sent from now on can reach a queue; and what they answer cannot be seen by the front end before its next window.
  * Any shorter window gives the same result.
  */
-export async function runEngine(pkg: Package, trace: Trace, options: RunOptions, collectors: Collector[]): Promise<Recording> {
+export async function runEngine(
+  pkg: Package,
+  trace: Trace,
+  options: RunOptions,
+  collectors: Collector[],
+): Promise<Recording> {
   const memory = memoryOf(pkg);
   const system = systemOf(pkg);
   const separations = separationsOf(memory);
@@ -59,7 +64,13 @@ export async function runEngine(pkg: Package, trace: Trace, options: RunOptions,
     dieOf[p] = link.die;
     creditDelay[p] = link.latencyPs + memory.baseDie.egressPs;
   }
-  resetCredits(pkg.dies.map((die) => die.clockPs), dieOf, creditDelay, halfPs, Math.max(...creditDelay) + 2 * roundTripPs);
+  resetCredits(
+    pkg.dies.map((die) => die.clockPs),
+    dieOf,
+    creditDelay,
+    halfPs,
+    Math.max(...creditDelay) + 2 * roundTripPs,
+  );
   const closedHandles = pkg.dies.reduce((sum, die) => sum + die.engines * die.window, 0);
   const handles = options.replay === 'open' ? Math.max(OPEN_LOOP_HANDLES, closedHandles) : closedHandles;
   const longest = Math.max(separations.readLatency + separations.burst, 2 * memory.controller.pipelineCk);
@@ -69,7 +80,18 @@ export async function runEngine(pkg: Package, trace: Trace, options: RunOptions,
   const timers = new Timers(pkg.dies.length);
   const work = makeWork(pkg, trace, places, map, options, timers, runnable);
   const samples = new Samples(collectors);
-  const front = new FrontEnd(pkg, system, map, work, timers, runnable, samples, requests, handles, options.replay === 'open');
+  const front = new FrontEnd(
+    pkg,
+    system,
+    map,
+    work,
+    timers,
+    runnable,
+    samples,
+    requests,
+    handles,
+    options.replay === 'open',
+  );
 
   let frontPs = 0; // the front end has handled every edge before this
   let backHalf = 0; // the channels have run up to this half clock
@@ -122,7 +144,9 @@ export async function runEngine(pkg: Package, trace: Trace, options: RunOptions,
     }
   }
   if (!partial && (front.inFlight > 0 || !work.finished())) {
-    throw new CheckError(`the run stopped with ${front.inFlight} requests in flight and nothing left that could move them`);
+    throw new CheckError(
+      `the run stopped with ${front.inFlight} requests in flight and nothing left that could move them`,
+    );
   }
   const writesPs = Math.ceil(lastWriteEndHalf() * halfPs);
   const makespanPs = partial ? frontPs : Math.max(front.lastAnswerPs, work.lastEventPs, writesPs);

@@ -16,14 +16,30 @@ export class Samples {
 
   /** The block's stage columns by name. */
   readonly stages: Record<
-    'windowWait' | 'downQueue' | 'downTransit' | 'controllerQueue' | 'bankPreparation' | 'dataTransfer' | 'upQueue' | 'upTransit',
+    | 'windowWait'
+    | 'downQueue'
+    | 'downTransit'
+    | 'controllerQueue'
+    | 'bankPreparation'
+    | 'dataTransfer'
+    | 'upQueue'
+    | 'upTransit',
     Float64Array
   >;
 
   constructor(private readonly collectors: readonly Collector[]) {
     const [windowWait, downQueue, downTransit, controllerQueue, bankPreparation, dataTransfer, upQueue, upTransit] =
       this.block.stages;
-    this.stages = { windowWait, downQueue, downTransit, controllerQueue, bankPreparation, dataTransfer, upQueue, upTransit };
+    this.stages = {
+      windowWait,
+      downQueue,
+      downTransit,
+      controllerQueue,
+      bankPreparation,
+      dataTransfer,
+      upQueue,
+      upTransit,
+    };
   }
 
   /** Call after a row has been written at index `count`. */

@@ -119,7 +119,10 @@ export class TraceWork implements Work {
     this.computeFrom = new Float64Array(engines);
     this.computePs = new Float64Array(engines);
     // rows carry no number format: their flops run at the die's highest peak
-    this.flopsPerPs = Float64Array.from(dies, (die) => Math.max(0, ...Object.values(die.peakFlops)) / die.engines / 1e12);
+    this.flopsPerPs = Float64Array.from(
+      dies,
+      (die) => Math.max(0, ...Object.values(die.peakFlops)) / die.engines / 1e12,
+    );
     for (let e = 0; e < engines; e++) this.depth[e] = dies[this.engineDie[e]].buffering;
   }
 
@@ -160,7 +163,12 @@ export class TraceWork implements Work {
       }
       const at = rows.first;
       if (this.partLeft[engine * 2] === 0) {
-        if (!this.arrived(engine, now) || (this.remembers && !this.depended(engine, at, now)) || (this.tiled && !this.inTile(engine, at, now))) return false;
+        if (
+          !this.arrived(engine, now) ||
+          (this.remembers && !this.depended(engine, at, now)) ||
+          (this.tiled && !this.inTile(engine, at, now))
+        )
+          return false;
         if (this.tiled && rows.op[at] === WRITE) {
           if (this.stores[engine].count === STORES) return false;
           this.keepStore(engine, at, now);

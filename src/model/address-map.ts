@@ -1,4 +1,4 @@
-import type { AddressMap as Spec, Domain, FieldName, Package } from '../config/package.js';
+import type { Domain, FieldName, Package, AddressMap as Spec } from '../config/package.js';
 import { memoryOf, systemOf } from './system.js';
 
 /** Bits of an atom number are looked up in slices of this many, one table a slice. */
@@ -83,7 +83,8 @@ export class AddressMap {
         let mask = 1 << (this.packed[name] + bit);
         if (name === 'row') {
           for (const fold of spec.xor) {
-            const inside = fold.target !== 'channel' && !(fold.target === 'pseudo_channel' && width.pseudo_channel === 0);
+            const inside =
+              fold.target !== 'channel' && !(fold.target === 'pseudo_channel' && width.pseudo_channel === 0);
             if (inside && fold.rowBits.includes(bit)) mask ^= 1 << (this.packed[fold.target as FieldName] + fold.bit);
           }
         }
@@ -93,7 +94,8 @@ export class AddressMap {
     const table = (slice: number): Int32Array => {
       const out = new Int32Array(1 << SLICE_BITS);
       for (let value = 0; value < out.length; value++) {
-        for (let i = 0; i < SLICE_BITS; i++) if (value & (1 << i)) out[value] ^= contribution[slice * SLICE_BITS + i] ?? 0;
+        for (let i = 0; i < SLICE_BITS; i++)
+          if (value & (1 << i)) out[value] ^= contribution[slice * SLICE_BITS + i] ?? 0;
       }
       return out;
     };
@@ -105,7 +107,8 @@ export class AddressMap {
     for (const fold of spec.xor) {
       const rowMask = fold.rowBits.reduce((mask, bit) => mask | (1 << bit), 0);
       if (fold.target === 'channel') unitFold.push({ place: (1 << fold.bit) * system.pseudoChannels, rowMask });
-      else if (fold.target === 'pseudo_channel' && width.pseudo_channel === 0) unitFold.push({ place: 1 << fold.bit, rowMask });
+      else if (fold.target === 'pseudo_channel' && width.pseudo_channel === 0)
+        unitFold.push({ place: 1 << fold.bit, rowMask });
     }
     this.unitFold = unitFold;
 
@@ -127,9 +130,7 @@ export class AddressMap {
           part[name] = rest % radix[i];
           rest = Math.floor(rest / radix[i]);
         });
-        places.push(
-          (domain.stacks[part.stack] * o.channels + part.channel) * o.pseudo_channels + part.pseudo_channel,
-        );
+        places.push((domain.stacks[part.stack] * o.channels + part.channel) * o.pseudo_channels + part.pseudo_channel);
       }
     });
     this.unitPlace = Int32Array.from(places);

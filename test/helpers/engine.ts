@@ -1,18 +1,25 @@
-import type { Package } from '../../src/config/package.js';
 import { domains } from '../../src/config/index.js';
+import type { Package } from '../../src/config/package.js';
 import {
-  type Collector,
   COMMANDS,
+  type Collector,
   type CommandName,
   geometryOf,
   type Recording,
-  run,
   type RunOptions,
+  run,
   type SampleBlock,
   STAGES,
 } from '../../src/engine/index.js';
 import { AddressMap } from '../../src/model/address-map.js';
-import { type AccessBatch, type AccessTrace, type KernelTrace, READ, type Trace, WRITE } from '../../src/trace/batch.js';
+import {
+  type AccessBatch,
+  type AccessTrace,
+  type KernelTrace,
+  READ,
+  type Trace,
+  WRITE,
+} from '../../src/trace/batch.js';
 import { openTrace } from '../../src/trace/index.js';
 
 export interface Row {
@@ -79,7 +86,11 @@ export async function kernelTrace(pkg: Package, text: string): Promise<KernelTra
   async function* bytes(): AsyncGenerator<Buffer> {
     yield Buffer.from(text);
   }
-  const trace = await openTrace('-', { input: bytes(), dieNames: pkg.dies.map((die) => die.name), geometry: geometryOf(pkg, domains(pkg)) });
+  const trace = await openTrace('-', {
+    input: bytes(),
+    dieNames: pkg.dies.map((die) => die.name),
+    geometry: geometryOf(pkg, domains(pkg)),
+  });
   if (trace.kind !== 'kernel') throw new Error('not a kernel trace');
   return trace;
 }
@@ -97,7 +108,11 @@ export interface LoggedCommand {
 }
 
 /** One finished request: its stage delays by name, ps. */
-export type Sample = Record<(typeof STAGES)[number], number> & { readonly op: number; readonly bytes: number; readonly donePs: number };
+export type Sample = Record<(typeof STAGES)[number], number> & {
+  readonly op: number;
+  readonly bytes: number;
+  readonly donePs: number;
+};
 
 export interface Outcome {
   readonly recording: Recording;
@@ -148,7 +163,9 @@ export async function simulate(pkg: Package, trace: Trace, wishes: Wishes = {}):
 }
 
 /** Addresses of places in a package's first die, for traces that aim at banks and rows. */
-export function placer(pkg: Package): (place: { p?: number; sid?: number; bankGroup?: number; bank?: number; row?: number; column?: number }) => number {
+export function placer(
+  pkg: Package,
+): (place: { p?: number; sid?: number; bankGroup?: number; bank?: number; row?: number; column?: number }) => number {
   const map = new AddressMap(pkg, domains(pkg));
   const { organisation: o } = pkg.memory[0];
   return ({ p = 0, sid = 0, bankGroup = 0, bank = 0, row = 0, column = 0 }) =>

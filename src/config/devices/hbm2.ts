@@ -2,7 +2,7 @@ import type { DevicePreset } from './preset.js';
 
 const FCCM = 'derived from the measurements of Wang, Huang, Zhang and Alonso, FCCM 2020';
 const GUIDE = 'public user guides of FPGAs with HBM2';
-const TABLE = 'timing table for HBM2 in O\'Connor et al., MICRO 2017, from memory';
+const TABLE = "timing table for HBM2 in O'Connor et al., MICRO 2017, from memory";
 const MEMORY = 'from memory, representative';
 
 /**

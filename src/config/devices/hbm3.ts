@@ -1,7 +1,7 @@
 import type { DevicePreset } from './preset.js';
 
 const JESD238 = 'JESD238, through a cross-standard digest';
-const HBM2_TABLE = 'timing table for HBM2 in O\'Connor et al., MICRO 2017, from memory; taken as representative';
+const HBM2_TABLE = "timing table for HBM2 in O'Connor et al., MICRO 2017, from memory; taken as representative";
 const MEMORY = 'from memory, representative';
 
 /**
@@ -32,7 +32,10 @@ export const hbm3: DevicePreset = {
     tRAS: { value: '29 ns', source: HBM2_TABLE },
     tRP: { value: '16 ns', source: HBM2_TABLE },
     tRCDRD: { value: '16 ns', source: HBM2_TABLE },
-    tRCDWR: { value: '12 ns', source: 'tRCDRD x 14.3/19.0, the ratio of JESD270-4 (HBM4), through a cross-standard digest' },
+    tRCDWR: {
+      value: '12 ns',
+      source: 'tRCDRD x 14.3/19.0, the ratio of JESD270-4 (HBM4), through a cross-standard digest',
+    },
     tRRD_S: { value: '4 ck', source: `${HBM2_TABLE} (2 to 4 ck)` },
     tRRD_L: { value: '6 ck', source: MEMORY },
     tFAW: { value: '16 ns', source: HBM2_TABLE },
@@ -45,7 +48,10 @@ export const hbm3: DevicePreset = {
     tCCD_R: { value: '3 ck', source: `${JESD238} table 93 has it apart; value from memory` },
     tPPD: { value: '2 ck', source: MEMORY },
     tRTW: { value: '2 ck', source: MEMORY },
-    tRFCab: { value: '350 ns', source: 'JESD238 table 84 for 8 Gb a channel (260 / 350 / 450 ns for 4 / 8 / 16 Gb), from memory' },
+    tRFCab: {
+      value: '350 ns',
+      source: 'JESD238 table 84 for 8 Gb a channel (260 / 350 / 450 ns for 4 / 8 / 16 Gb), from memory',
+    },
     tRFCpb: { value: '200 ns', source: MEMORY },
     tREFI: { value: '3.9 us', source: 'JESD238 table 84, from memory' },
     tRREFD: { value: '8 ns', source: MEMORY },
