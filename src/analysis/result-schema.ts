@@ -86,7 +86,11 @@ const kernel = z.strictObject({
   attained_flops_per_s: z.number().min(0).nullable(),
   bound_bytes_per_s: rate.describe('the bandwidth ceiling of the dies it ran on, for its mix of reads and writes'),
   attained_bytes_per_s: rate,
-  roofline_ratio: ratio.nullable().describe('attained over bound: flops, or bytes where there are no flops'),
+  roofline_ratio: ratio
+    .nullable()
+    .describe(
+      'attained over bound: flops, or bytes where there are no flops; a short kernel whose refreshes were postponed may pass 1',
+    ),
   compute_utilization: ratio.describe('engine compute time over engines of its dies x its duration'),
   mean_read_latency_ps: ps.nullable(),
   estimate_ps: ps.nullable().describe("the trace's own estimate, all launches together"),

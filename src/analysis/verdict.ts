@@ -2,27 +2,30 @@ import { STACK_CLASSES, type StackClass } from '../engine/recording.js';
 import { formatBandwidth, formatPercent } from '../units.js';
 import type { Verdict } from './result-schema.js';
 
+// where a sentence changes its mind; common practice, no source
 const AT_BOUND = 0.9; // of a ceiling: nearer than this, the ceiling itself is what binds
 const COMPUTE_LEADS = 0.7; // engines computing for this share of the time bind before memory does
 const LEADING_SHARE = 0.25; // of all clocks: a cause smaller than this explains too little to be named alone
 const LEADING_FACTOR = 1.5; // and it must be this much larger than the next
 
-/** What a loss is called in a sentence. Names in the stack itself stay the classes'. */
-const CAUSES: Readonly<Record<Exclude<StackClass, 'read_data' | 'write_data'>, string>> = {
-  refresh: 'refresh',
-  row_cycle: 'opening and closing rows (row cycle)',
-  activate_window: 'the activate window (tRRD, tFAW)',
-  column_gap: 'gaps between columns of one bank group (tCCD)',
-  turnaround: 'read/write turnaround of the data bus',
-  command_bus: 'the command bus',
-  starved_down_link: 'the down links',
-  starved_up_link: 'the up links (no landing credit for read data)',
-  starved_queue_credits: 'full controller queues elsewhere (queue credits)',
-  starved_window: 'too few outstanding requests (window)',
-  starved_compute: 'compute (loads wait until tiles are done)',
-  starved_imbalance: 'imbalance (other channels were busy, these had no work)',
-  starved_arrivals: 'a lack of arrivals (the trace asked for no more)',
-  starved_drain: 'the end of the run, when the work had run out',
+/** What a loss is called in a sentence, and what that means. Names in the stack itself stay the classes'. */
+const CAUSES: Readonly<
+  Record<Exclude<StackClass, 'read_data' | 'write_data'>, readonly [name: string, meaning: string]>
+> = {
+  refresh: ['refresh', 'no data moves while banks are refreshed'],
+  row_cycle: ['the row cycle', 'rows had to be closed and opened before data could move'],
+  activate_window: ['the activate window', 'tRRD and tFAW held back the next row'],
+  column_gap: ['column gaps', 'accesses that follow each other in one bank group are tCCD_L apart'],
+  turnaround: ['bus turnaround', 'the data bus changed between reads and writes'],
+  command_bus: ['the command bus', 'it was taken when the next command was due'],
+  starved_down_link: ['the down links', 'requests and write data queued for them'],
+  starved_up_link: ['the up links', 'reads waited for room to land their data'],
+  starved_queue_credits: ['queue credits', 'requests waited for room in the queue of their channel'],
+  starved_window: ['the request window', 'the engines had as many requests outstanding as they may'],
+  starved_compute: ['compute', 'loads waited until earlier tiles were computed'],
+  starved_imbalance: ['imbalance', 'some channels had work left when others had none'],
+  starved_arrivals: ['arrivals', 'the trace asked for no more at the time'],
+  starved_drain: ['the drain at the end', 'the work had run out'],
 };
 
 /** The figures the verdict is derived from. */
@@ -51,7 +54,9 @@ function judge({ achieved, bound, limit, computeUtilization, stack }: Standing):
   }
   const distance = achieved / bound;
   const ceiling = limit === 'link' ? 'link payload ceiling' : 'refresh-derated DRAM peak';
-  const standing = `${formatBandwidth(achieved)} is ${formatPercent(distance)} of the ${ceiling}`;
+  // refresh may be postponed past the end of a short run, which then beats the long-run ceiling
+  const above = distance > 1 && limit === 'dram' ? ' (refreshes were postponed)' : '';
+  const standing = `${formatBandwidth(achieved)} is ${formatPercent(distance)} of the ${ceiling}${above}`;
   if (distance >= AT_BOUND) {
     const what = limit === 'link' ? 'Link bandwidth' : 'DRAM bandwidth';
     return { sentence: `${what} binds: ${standing}.`, binds: limit, distance_ratio: distance };
@@ -69,14 +74,13 @@ function judge({ achieved, bound, limit, computeUtilization, stack }: Standing):
   if (first === undefined)
     return { sentence: `What binds was not recorded: ${standing}.`, binds: 'nothing', distance_ratio: distance };
   if (first.share >= LEADING_SHARE && (second === undefined || first.share >= LEADING_FACTOR * second.share)) {
-    const sentence = `What binds most is ${CAUSES[first.name]}: it took ${formatPercent(first.share)} of the DRAM clocks; ${standing}.`;
+    const [name, meaning] = CAUSES[first.name];
+    const sentence = `Mostly ${name} binds: ${meaning}, for ${formatPercent(first.share)} of the DRAM clocks; ${standing}.`;
     return { sentence, binds: first.name, distance_ratio: distance };
   }
-  const leading = losses
-    .slice(0, 3)
-    .map(({ name, share }) => `${CAUSES[name]} (${formatPercent(share)} of the clocks)`);
+  const leading = losses.slice(0, 3).map(({ name, share }) => `${CAUSES[name][0]} (${formatPercent(share)})`);
   return {
-    sentence: `No single limit dominates: ${standing}; the most was lost to ${listed(leading)}.`,
+    sentence: `No single limit dominates: ${standing}; most DRAM clocks were lost to ${listed(leading)}.`,
     binds: 'nothing',
     distance_ratio: distance,
   };

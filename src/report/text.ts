@@ -1,5 +1,4 @@
 import type { Result } from '../analysis/result-schema.js';
-import { formatCount } from '../units.js';
 import { bandwidthSection, stackSection } from './sections/bandwidth.js';
 import { computeSection, kernelSection } from './sections/kernels.js';
 import { latencySection } from './sections/latency.js';
@@ -23,12 +22,12 @@ export function textReport(result: Result, style: TextStyle): string {
 }
 
 function heading({ provenance, package: pkg, verdict }: Result, { chalk, width }: Ink): string {
-  const { options, seed, trace_file, trace_rows, skipped_rows, package_file, version } = provenance;
+  const { options, seed, trace_file, skipped_rows, package_file, version } = provenance;
   const line = facts(
     [
       `penstock ${version}`,
       `${plain(pkg.name)} (${plain(package_file)})`,
-      `${plain(trace_file)}, ${formatCount(trace_rows)} rows`,
+      plain(trace_file),
       ...(skipped_rows > 0 ? [`${skipped_rows} bad rows skipped`] : []),
       `${options.replay} loop`.replace('paced loop', 'paced'),
       `seed ${plain(seed, 24)}`,

@@ -8,10 +8,9 @@ const MOST = 20; // kernels on the page
 /** Compute utilization in total and by die. */
 export function computeSection({ compute }: Result, { chalk, width }: Ink): string {
   const dies = compute.dies.map((die) => {
-    const waiting = die.mean_outstanding_requests.toFixed(0);
-    return `${plain(die.name, 24)} ${formatPercent(die.utilization)}, ${waiting} requests outstanding`;
+    return `${plain(die.name, 24)} ${formatPercent(die.utilization)}, ${die.mean_outstanding_requests.toFixed(0)} requests in flight`;
   });
-  const total = `${formatPercent(compute.utilization)} of engine time computing`;
+  const total = `${formatPercent(compute.utilization)} of engine time`;
   return `${chalk.bold('Compute utilization')}\n${facts([total, ...dies], width, '  ')}`;
 }
 
@@ -19,14 +18,16 @@ export function computeSection({ compute }: Result, { chalk, width }: Ink): stri
 export function kernelSection({ kernels }: Result, { chalk }: Ink): string {
   const shown = kernels.length <= MOST ? kernels : longest(kernels);
   const estimates = shown.some((kernel) => kernel.estimate_ps !== null);
-  const head = ['Kernels', 'time', 'bandwidth', 'attained', 'bound', 'by', 'reached', 'compute', 'read', 'estimate'];
-  const rows = shown.map((kernel) => row(kernel));
+  const head = ['Kernels', 'time', 'bandwidth', 'FLOP/s', 'bound', 'by', 'reached', 'compute', 'x est.'];
   const cut = (cells: readonly string[]): readonly string[] => (estimates ? cells : cells.slice(0, -1));
-  const text = table(cut(head), rows.map(cut), [5]);
+  const text = table(cut(head), shown.map(row).map(cut), [5]);
   // the heading stands in the table's first line
   const [first, ...rest] = text.split('\n');
   const lines = [chalk.bold(first.slice(2)), ...rest];
   const more = kernels.length - shown.length;
+  if (shown.some((kernel) => kernel.limit === 'dram' && (kernel.roofline_ratio ?? 0) > 1)) {
+    lines.push('  above 100 %: refreshes of that time were postponed; the bound is that of a long run');
+  }
   if (more > 0) lines.push(`  and ${more} shorter ones (--json has them all)`);
   return lines.join('\n');
 }
@@ -47,12 +48,20 @@ function row(kernel: KernelResult): string[] {
     plain(kernel.name, NAME),
     formatTime(kernel.duration_ps),
     formatBandwidth(kernel.attained_bytes_per_s),
-    flops === null ? '-' : formatFlops(flops),
-    bound === null ? formatBandwidth(kernel.bound_bytes_per_s) : formatFlops(bound),
+    flops === null ? '-' : prefixed(flops),
+    bound === null ? formatBandwidth(kernel.bound_bytes_per_s) : prefixed(bound),
     kernel.limit === 'none' ? '-' : kernel.limit,
     ratio === null ? '-' : formatPercent(ratio),
     formatPercent(kernel.compute_utilization),
-    kernel.mean_read_latency_ps === null ? '-' : formatTime(kernel.mean_read_latency_ps),
-    estimate === null || kernel.duration_ps === 0 ? '-' : `x ${(kernel.duration_ps / estimate).toFixed(2)}`,
+    estimate === null || kernel.duration_ps === 0 ? '-' : times(kernel.duration_ps / estimate),
   ];
+}
+
+/** FLOP/s under a heading that says so: 1.55 P. */
+function prefixed(flopsPerS: number): string {
+  return formatFlops(flopsPerS).replace('FLOP/s', '').trimEnd();
+}
+
+function times(ratio: number): string {
+  return ratio >= 1000 ? '>999' : ratio.toFixed(2);
 }

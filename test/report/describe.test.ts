@@ -1,0 +1,50 @@
+import { describe, expect, test } from 'vitest';
+import { describePackage } from '../../src/config/index.js';
+import { TIMING_NAMES } from '../../src/config/package.js';
+import { descriptionReport } from '../../src/report/index.js';
+import { smallPackage } from '../helpers/packages.js';
+
+const text = (...overrides: string[]): string =>
+  descriptionReport(describePackage(smallPackage(...overrides)), { colour: false, width: 100 });
+
+describe('description of a package', () => {
+  test('every timing stands there in ck and ns with its source', () => {
+    const lines = text().split('\n');
+    const { timings } = smallPackage().memory[0];
+    for (const name of TIMING_NAMES) {
+      const cells =
+        lines
+          .find((line) => line.trim().startsWith(`${name} `))
+          ?.trim()
+          .split(/ {2,}/) ?? [];
+      expect(cells.slice(0, 2)).toEqual([name, String(timings[name].ck)]);
+      expect(Number(cells[2])).toBeCloseTo(timings[name].ns, 3);
+      expect(cells[3]?.length ?? 0).toBeGreaterThan(5);
+    }
+  });
+
+  test('at most 100 columns', () => {
+    expect(
+      Math.max(
+        ...text()
+          .split('\n')
+          .map((line) => [...line].length),
+      ),
+    ).toBeLessThanOrEqual(100);
+  });
+
+  test('says capacity, peak, unloaded latency and the address map', () => {
+    const all = text();
+    expect(all).toContain('capacity 16.0 GiB');
+    expect(all).toContain('peak 819.2 GB/s');
+    expect(all).toContain('no refresh');
+    expect(all).toContain('column.0-2 at 5-7');
+    expect(all).toContain('row.0-13');
+    expect(all).toContain('hit / closed / conflict');
+  });
+
+  test('follows overrides', () => {
+    expect(text('memory.0.refresh.mode=all-bank')).toContain('all-bank refresh');
+    expect(text('links.0.latency=9 ns')).toContain('9.00 ns');
+  });
+});
