@@ -21,7 +21,8 @@ function installed() {
   const wanted = json('package-lock.json').packages;
   const present = json('node_modules', '.package-lock.json').packages;
   return Object.entries(wanted).every(
-    ([name, entry]) => name === '' || entry.link || entry.optional || entry.devOptional || present[name]?.version === entry.version,
+    ([name, entry]) =>
+      name === '' || entry.link || entry.optional || entry.devOptional || present[name]?.version === entry.version,
   );
 }
 if (!installed()) {
@@ -40,7 +41,11 @@ const newest = (folder) =>
       .map((entry) => statSync(join(entry.parentPath ?? entry.path, entry.name)).mtimeMs),
   );
 const stamp = at('node_modules', '.build-stamp');
-const sources = Math.max(newest(at('src')), statSync(at('tsconfig.json')).mtimeMs, statSync(at('package-lock.json')).mtimeMs);
+const sources = Math.max(
+  newest(at('src')),
+  statSync(at('tsconfig.json')).mtimeMs,
+  statSync(at('package-lock.json')).mtimeMs,
+);
 if (!existsSync(at('dist', 'cli', 'main.js')) || !existsSync(stamp) || statSync(stamp).mtimeMs < sources) {
   rmSync(at('dist'), { recursive: true, force: true });
   const { bin } = json('node_modules', 'typescript', 'package.json');
