@@ -8,11 +8,11 @@ export function bandwidthSection({ bandwidth, makespan_ps }: Result, { chalk, wi
   const share = bandwidth.achieved_bytes_per_s / bandwidth.peak_bytes_per_s;
   const ofBound = bandwidth.achieved_bytes_per_s / bandwidth.bound_bytes_per_s;
   const achieved = `${formatBandwidth(bandwidth.achieved_bytes_per_s)} achieved in ${formatTime(makespan_ps)}`;
-  const ratios = `${formatPercent(share)} of peak, ${formatPercent(ofBound)} of the bound that holds`;
+  const ratios = `${formatPercent(share)} of peak, ${formatPercent(ofBound)} of the bound`;
   const rates = bandwidth.stacks.map((stack) => stack.achieved_bytes_per_s);
   return [
     chalk.bold('Bandwidth'),
-    `  ${chalk.bold(achieved)}  ${chalk.green(bar(share, 20))}  ${ratios}`,
+    `  ${chalk.bold(achieved)}  ${chalk.green(bar(share, 18))}  ${ratios}`,
     facts(
       [
         `read ${formatBandwidth(bandwidth.read_bytes_per_s)}`,
