@@ -85,7 +85,8 @@ describe('run', () => {
     expect(first.provenance.seed).toBe('1');
     expect(other.provenance.seed).toBe('x');
     expect(other.provenance.options.overrides).toEqual(['memory.0.controller.page=closed']);
-    expect(other.makespan_ps).not.toBe(first.makespan_ps);
+    expect([first, other].map((result) => result.package.memory[0].controller.page)).toEqual(['open', 'closed']);
+    expect(other.dram).not.toEqual(first.dram);
     expect(first.bandwidth.useful_bytes).toBe(256 * 1024);
     expect(first.partial).toBe(false);
   });

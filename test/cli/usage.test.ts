@@ -1,6 +1,9 @@
 import { readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { beforeAll, describe, expect, test } from 'vitest';
+import { failure } from '../../src/cli/failure.js';
+import { program } from '../../src/cli/program.js';
+import { Session } from '../../src/cli/session.js';
 import { build, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 beforeAll(build, 120_000);
@@ -70,16 +73,40 @@ const REFUSED: readonly (readonly [name: string, args: readonly string[], code: 
 ];
 
 describe('refused', () => {
+  const session = new Session(new AbortController().signal);
   for (const [name, args, code, says] of REFUSED) {
     test(name, async () => {
-      const ended = await penstock(args);
-      expect(ended).toMatchObject({ code, out: '' });
-      for (const words of says) expect(ended.err).toContain(words);
-      // one paragraph, no stack
-      expect(ended.err.trimEnd().split('\n')).toHaveLength(1);
-      expect(ended.err).not.toContain('    at ');
+      const thrown = await program(args, session).then(
+        () => 'nothing',
+        (error) => error,
+      );
+      const refused = failure(thrown);
+      expect(refused.code).toBe(code);
+      for (const words of says) expect(refused.message).toContain(words);
+      expect(refused.message).not.toContain('\n'); // one paragraph
     });
   }
+
+  test('as a process: the message on standard error, nothing on standard output, no stack', async () => {
+    for (const [args, code, says] of [
+      [[], 2, 'no command'],
+      [['run', 'nowhere.csv', '-p', WAGTAIL], 2, 'nowhere.csv'],
+      [['run', TRACE, '-p', WAGTAIL, '--json', '/nowhere/r.json'], 4, '/nowhere/r.json'],
+    ] as const) {
+      const ended = await penstock(args);
+      expect(ended).toMatchObject({ code, out: '' });
+      expect(ended.err).toContain(says);
+      expect(ended.err.trimEnd().split('\n')).toHaveLength(1);
+    }
+  });
+
+  test('what nobody foresaw is one line and code 3, with its stack only for those who ask', () => {
+    expect(failure(new TypeError('x is undefined\n  more'))).toEqual({
+      code: 3,
+      message: 'penstock: internal error: x is undefined. Set PENSTOCK_DEBUG=1 to see where',
+    });
+    expect(failure('a string').code).toBe(3);
+  });
 });
 
 describe('answered', () => {

@@ -9,12 +9,11 @@ import { VERSION } from '../../index.js';
 import { jsonReport, textReport } from '../../report/index.js';
 import { command, PACKAGE, SET, wholeNumber } from '../command.js';
 import { CommandLog } from '../command-log.js';
+import { CHECKS_FAILED } from '../failure.js';
 import { OutputFile } from '../output.js';
 import { ProgressBar } from '../progress.js';
 import { parseUntil } from '../quantities.js';
 import { openFor, usefulBytes } from '../trace.js';
-
-const CHECKS_FAILED = 3; // exit code
 
 export const run = command({
   usage: 'run <trace>',
