@@ -15,7 +15,7 @@ import {
   unlinkSync,
   writeSync,
 } from 'node:fs';
-import { basename, dirname, join } from 'node:path';
+import { basename, dirname, join, resolve } from 'node:path';
 import { constants, gunzipSync, gzipSync } from 'node:zlib';
 import { InputError, SystemError } from '../errors.js';
 import { systemError } from './system-error.js';
@@ -44,7 +44,7 @@ export function discardUnfinished(): void {
 
 /** One output file. A name that ends in .gz is compressed, one gzip member for each piece written (RFC 1952, section 2.2). */
 export class OutputFile {
-  private readonly target: string; // what is replaced: links are followed
+  readonly target: string; // what is replaced: links are followed
   private readonly temporary: string | null; // null: not a regular file (a pipe, /dev/null), written as it is
   private readonly fd: number;
   private readonly zipped: boolean;
@@ -61,7 +61,9 @@ export class OutputFile {
     if (there?.isFile() && there.size > 0) refuseForeign(file, kind);
     const special = there !== undefined && !there.isFile();
     this.target = there === undefined ? file : attempt(file, () => realpathSync(file));
-    this.temporary = special ? null : join(dirname(this.target), `.${basename(this.target)}.${process.pid}.tmp`);
+    if (!special) refuseTwice(file, this.target);
+    const mark = `${process.pid}-${Date.now().toString(36)}`; // no two programs, and no leftover of one that was killed
+    this.temporary = special ? null : join(dirname(this.target), `.${basename(this.target)}.${mark}.tmp`);
     this.fd = attempt(file, () => openSync(this.temporary ?? this.target, special ? 'w' : 'wx', 0o666));
     unfinished.add(this);
     // a replaced file keeps its permissions, where the file system has them
@@ -126,6 +128,15 @@ function refuseForeign(file: string, kind: Kind): void {
     expected: `a new name, or ${same} to replace`,
     hint: 'Nothing was written; name another file, or remove this one',
   });
+}
+
+/** One run cannot write two outputs to one file. */
+function refuseTwice(file: string, target: string): void {
+  for (const other of unfinished) {
+    if (resolve(other.target) !== resolve(target)) continue;
+    const expected = 'a file of its own for each output';
+    throw new InputError({ where: { file }, found: 'a file that another output of this run goes to', expected });
+  }
 }
 
 /** The first characters of a file, un-gzipped when it is gzip. */

@@ -49,6 +49,13 @@ describe('whole or not at all', () => {
     expect(readdirSync(folder.path)).toEqual(['a.csv']);
   });
 
+  test('two outputs of one run cannot go to one file', () => {
+    const first = new OutputFile(folder.at('both'), 'result');
+    expect(() => new OutputFile(`${folder.path}/./both`, 'commandLog')).toThrow(/another output of this run/);
+    first.discard();
+    written('both', 'commandLog', LOG);
+  });
+
   test('.gz is gzip, one member a piece', () => {
     const file = written('log.csv.gz', 'commandLog', LOG, '1,0,0,0,0,0,0,5,,ACT,0\n');
     expect(gunzipSync(readFileSync(file)).toString()).toBe(`${LOG}1,0,0,0,0,0,0,5,,ACT,0\n`);
