@@ -1465,10 +1465,14 @@ function shiftTimes(p: number, shift: number): void {
   }
 }
 
-/** Ends the accounts at `end` absolute half clocks (a whole clock): idle channels refresh up to there, idle tails are charged. */
-export function closeChannels(end: number, lastWork: number): void {
+/** Brings every channel, idle ones with their refreshes too, to `end` absolute half clocks. */
+export function settleChannels(end: number): void {
   keepInRange(end);
   for (let channel = 0; channel < K[CHANNELS]; channel++) runChannel(channel, end - ORIGIN[EPOCH], true);
+}
+
+/** Ends the accounts at `end` absolute half clocks (a whole clock): the tail of each data bus is charged. */
+export function closeAccounts(end: number, lastWork: number): void {
   for (let p = 0; p < K[CHANNELS] * K[PCS]; p++) {
     const pr = PR_WORDS * (p + 1);
     const t = end - ORIGIN[EPOCH];

@@ -7,12 +7,13 @@ import { memoryOf, systemOf } from '../model/system.js';
 import type { Trace } from '../trace/batch.js';
 import {
   channelsBusy,
-  closeChannels,
+  closeAccounts,
   keepInRange,
   lastBurstEndHalf,
   lastWriteEndHalf,
   resetChannels,
   runChannels,
+  settleChannels,
 } from './channel.js';
 import { resetCredits } from './credits.js';
 import { drainEgress, egressBusy, resetEgress, skipEgress } from './egress.js';
@@ -50,7 +51,7 @@ export async function runEngine(
   const upPs = least((link) => link.latencyPs) + memory.baseDie.egressPs;
   const roundTripPs = downPs + upPs;
   const windowHalf = Math.max(2, Math.floor(Math.min(options.windowPs, roundTripPs) / halfPs));
-  const untilHalf = Math.ceil(options.untilPs / halfPs);
+  let untilPs = options.untilPs; // brought forward by an interrupt
 
   // everything that holds state, from the DRAM up to the engines
   const places = domains(pkg);
@@ -118,15 +119,15 @@ export async function runEngine(
       }
       keepInRange(backHalf);
     }
-    if (frontPs >= options.untilPs) {
+    if (frontPs >= untilPs) {
       partial = true;
-      frontPs = options.untilPs;
+      frontPs = untilPs;
     }
 
     // the front end, then the channels, then what they answered goes on the up links
     while (!front.advance(frontPs)) await work.refill();
     const reachHalf = Math.floor((frontPs + downPs) / halfPs);
-    backHalf = Math.min(Math.max(backHalf, Math.min(reachHalf, backHalf + windowHalf)), untilHalf);
+    backHalf = Math.min(Math.max(backHalf, Math.min(reachHalf, backHalf + windowHalf)), Math.ceil(untilPs / halfPs));
     keepInRange(backHalf);
     runChannels(backHalf);
     if (partial) break;
@@ -137,10 +138,7 @@ export async function runEngine(
     if (++windows % WINDOWS_PER_BREATH === 0) {
       options.onProgress?.({ simulatedPs: frontPs, requests: front.answered, bytes: front.bytesAnswered });
       if (windows % (16 * WINDOWS_PER_BREATH) === 0) await new Promise(setImmediate);
-      if (options.signal?.aborted) {
-        partial = true;
-        break;
-      }
+      if (options.signal?.aborted) untilPs = frontPs; // the next turn is the last
     }
   }
   if (!partial && (front.inFlight > 0 || !work.finished())) {
@@ -150,9 +148,11 @@ export async function runEngine(
   }
   const writesPs = Math.ceil(lastWriteEndHalf() * halfPs);
   const makespanPs = partial ? frontPs : Math.max(front.lastAnswerPs, work.lastEventPs, writesPs);
+  let elapsedCk = Math.ceil(makespanPs / memory.clockPs);
+  settleChannels(2 * elapsedCk);
   // a run cut short still accounts for the bursts that were under way
-  const elapsedCk = Math.max(Math.ceil(makespanPs / memory.clockPs), partial ? lastBurstEndHalf() / 2 : 0);
-  closeChannels(2 * elapsedCk, Math.ceil(front.lastSendPs / halfPs));
+  if (partial) elapsedCk = Math.max(elapsedCk, lastBurstEndHalf() / 2);
+  closeAccounts(2 * elapsedCk, Math.ceil(front.lastSendPs / halfPs));
   front.close(makespanPs);
   return record(pkg, front, work, { makespanPs, partial, elapsedCk, attribution: options.attribution });
 }
