@@ -52,14 +52,16 @@ export const run = command({
   },
   examples: [
     ['run traces/wagtail-step.csv -p configs/wagtail.yaml', 'the demo'],
+    ['run traces/wagtail-step.csv -p configs/wagtail.yaml --json step.json', 'the same, with every figure kept'],
     [
-      'run traces/wagtail-step.csv -p configs/wagtail.yaml --set memory.0.controller.page=closed --json closed.json',
-      'one key changed, figures kept',
+      'run traces/wagtail-step.csv -p configs/wagtail.yaml --set memory.0.controller.page=closed',
+      'one key of the package changed',
     ],
     [
-      'run access.csv.gz -p configs/wagtail.yaml --replay open --until 2ms --command-log commands.csv.gz',
-      'recorded arrivals, every DRAM command written',
+      'run traces/wagtail-step.csv -p configs/wagtail.yaml --until 20us --command-log log.csv.gz',
+      'the first 20 us, with every DRAM command',
     ],
+    ['run access.csv.gz -p configs/wagtail.yaml --replay open', 'recorded times as arrivals'],
   ],
   main: async (args, session) => {
     // the package, with the overrides laid over it

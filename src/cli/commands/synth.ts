@@ -48,10 +48,7 @@ export const synth = command({
   },
   examples: [
     ['synth uniform granule=64B span=2GiB --bytes 64MiB --reads 0.7 --out random.csv.gz', 'random reads and writes'],
-    [
-      'synth zipf s=1.1 granule=256B span=8GiB --bytes 16MiB --out - | penstock run - -p configs/wagtail.yaml',
-      'straight into a run',
-    ],
+    ['synth zipf s=1.1 span=8GiB --bytes 16MiB -o - | penstock run - -p configs/wagtail.yaml', 'straight into a run'],
   ],
   main: async (args, session) => {
     const batches = synthesise(args.pattern.join(' '), {
