@@ -1,6 +1,7 @@
 import { type Collector, type SampleBlock, STAGES } from '../engine/recording.js';
 import { Histogram } from './histogram.js';
 
+const ROWS = 1 << 12; // taken at once: what the columns of so many need stays in cache
 const WRITE_OP = 1; // SampleBlock.op; 0 and 2 are reads
 
 /** Latency of the reads of one kernel, and how many bytes were asked for by all its requests. */
@@ -23,18 +24,14 @@ export class Delays implements Collector {
   /** By kernel index; grows as kernels are seen. */
   readonly kernels: KernelDelays[] = [];
   forwarded = 0; // reads served from a write queue
-  negative = 0; // stage delays below zero: always an engine fault
 
-  private readonly readRows = new Int32Array(1 << 12);
-  private readonly writeRows = new Int32Array(1 << 12);
-  private picked = new Float64Array(1 << 12); // one column's values of the rows picked
-  private latency = new Float64Array(1 << 12);
+  private readonly readRows = new Int32Array(ROWS);
+  private readonly writeRows = new Int32Array(ROWS);
+  private readonly latency = new Float64Array(ROWS); // of the row, where it is a read
 
   add(block: SampleBlock): void {
     // longer blocks than the engine's are taken in pieces
-    for (let from = 0; from < block.count; from += this.readRows.length) {
-      this.addRows(block, from, Math.min(block.count, from + this.readRows.length));
-    }
+    for (let from = 0; from < block.count; from += ROWS) this.addRows(block, from, Math.min(block.count, from + ROWS));
   }
 
   private addRows(block: SampleBlock, from: number, to: number): void {
@@ -50,14 +47,15 @@ export class Delays implements Collector {
     }
 
     // one stage after the other, each a tight loop over one column
-    latency.fill(0, 0, reads);
+    latency.fill(0);
     for (let stage = 0; stage < block.stages.length; stage++) {
       const column = block.stages[stage];
-      this.pick(column, readRows, reads, this.reads[stage]);
-      for (let i = 0; i < reads; i++) latency[i] += this.picked[i];
-      this.pick(column, writeRows, writes, this.writes[stage]);
+      for (let row = from; row < to; row++) latency[row - from] += column[row];
+      this.reads[stage].add(column, readRows, reads);
+      this.writes[stage].add(column, writeRows, writes);
     }
-    this.readLatency.add(latency, reads);
+    for (let i = 0; i < reads; i++) readRows[i] -= from;
+    this.readLatency.add(latency, readRows, reads);
 
     for (let row = from; row < to; row++) {
       const entry = this.kernels[kernel[row]] ?? this.kernelEntry(kernel[row]);
@@ -65,29 +63,15 @@ export class Delays implements Collector {
       entry.bytes += bytes[row];
     }
     for (let i = 0; i < reads; i++) {
-      const entry = this.kernels[kernel[readRows[i]]];
+      const entry = this.kernels[kernel[from + readRows[i]]];
       entry.reads++;
-      entry.readLatencyPs += latency[i];
+      entry.readLatencyPs += latency[readRows[i]];
     }
   }
 
-  /** Copies a column's values of some rows into `picked` and adds them to a histogram; negative ones are counted and taken as 0. */
-  private pick(column: Float64Array, rows: Int32Array, count: number, into: Histogram): void {
-    const { picked } = this;
-    let least = 0;
-    for (let i = 0; i < count; i++) {
-      const value = column[rows[i]];
-      picked[i] = value;
-      if (value < least) least = value;
-    }
-    if (least < 0) {
-      for (let i = 0; i < count; i++) {
-        if (picked[i] >= 0) continue;
-        this.negative++;
-        picked[i] = 0;
-      }
-    }
-    into.add(picked, count);
+  /** The least delay of any stage, ps: below zero only by a fault of the engine. */
+  get least(): number {
+    return Math.min(...this.reads.map((stage) => stage.min), ...this.writes.map((stage) => stage.min));
   }
 
   private kernelEntry(kernel: number): KernelDelays {

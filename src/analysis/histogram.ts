@@ -20,37 +20,48 @@ export class Histogram {
   sum = 0; // exact for whole numbers while it is below 2^53
   min = Number.POSITIVE_INFINITY; // Infinity while empty
   max = Number.NEGATIVE_INFINITY; // -Infinity while empty
+  private readonly recent = new Uint32Array(BUCKETS); // half the memory of `counts`, so it stays in cache
+  private sinceSpill = 0; // values in `recent`: below 2^32, so that no bucket can wrap
   private readonly counts = new Float64Array(BUCKETS);
 
-  /** Adds the first `count` values of a column. A value that is negative or not a number throws RangeError. */
-  add(values: Float64Array, count: number): void {
-    const { counts } = this;
-    const words = new Int32Array(values.buffer, values.byteOffset, 2 * count);
+  /**
+   * Adds the values of a column that stand at `rows[0 … count - 1]`. A negative value shows in `min` and lies in the first bucket;
+   * one that is not a number shows in `sum`.
+   */
+  add(values: Float64Array, rows: Int32Array, count: number): void {
+    if (this.sinceSpill + count >= 2 ** 32) this.spill();
+    const { recent } = this;
+    const words = new Int32Array(values.buffer, values.byteOffset, 2 * values.length);
     let sum = 0;
     let { min, max } = this;
     for (let i = 0; i < count; i++) {
-      const value = values[i];
+      const row = rows[i];
+      const value = values[row];
       sum += value;
       if (value < min) min = value;
       if (value > max) max = value;
       // the bucket is read off the bits: exponent and the top of the mantissa
-      let bucket = (words[2 * i + HIGH] >> SHIFT) - BIAS;
+      let bucket = (words[2 * row + HIGH] >> SHIFT) - BIAS;
       if (bucket < 0) bucket = 0;
       if (bucket > LAST) bucket = LAST;
-      counts[bucket]++;
+      recent[bucket]++;
     }
-    if (count > 0 && !(min >= 0 && sum < Number.POSITIVE_INFINITY)) {
-      throw new RangeError('a histogram takes numbers from 0 up');
-    }
+    this.sinceSpill += count;
     this.count += count;
     this.sum += sum;
     this.min = min;
     this.max = max;
   }
 
+  private spill(): void {
+    for (let bucket = 0; bucket < BUCKETS; bucket++) this.counts[bucket] += this.recent[bucket];
+    this.recent.fill(0);
+    this.sinceSpill = 0;
+  }
+
   /** Adds all that another histogram holds. */
   merge(other: Histogram): void {
-    for (let bucket = 0; bucket < BUCKETS; bucket++) this.counts[bucket] += other.counts[bucket];
+    for (let bucket = 0; bucket < BUCKETS; bucket++) this.counts[bucket] += other.counts[bucket] + other.recent[bucket];
     this.count += other.count;
     this.sum += other.sum;
     this.min = Math.min(this.min, other.min);
@@ -70,6 +81,7 @@ export class Histogram {
     if (this.count === 0) return 0;
     const rank = Math.max(1, Math.ceil(fraction * this.count));
     if (rank >= this.count) return this.max;
+    this.spill();
     let seen = 0;
     let bucket = 0;
     while (bucket < LAST && seen + this.counts[bucket] < rank) seen += this.counts[bucket++];

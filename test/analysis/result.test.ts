@@ -2,7 +2,7 @@ import { describe, expect, test } from 'vitest';
 import { buildResult, type Origin, type Result, resultJsonSchema, resultProblems } from '../../src/analysis/index.js';
 import { STACK_CLASSES, STAGES } from '../../src/engine/recording.js';
 import { jsonReport } from '../../src/report/index.js';
-import { type Made, made } from './recording.js';
+import { delaysOf, type Made, made } from './recording.js';
 
 const ORIGIN: Origin = {
   version: '9.9.9',
@@ -166,6 +166,11 @@ describe('checks', () => {
       'more bytes than the buses carry',
       recording((r) => ({ kernels: [{ ...r.kernels[0], movedReadBytes: 1e9 }, r.kernels[1]] })),
       'bytes moved above the DRAM peak',
+    ],
+    [
+      'a delay below zero',
+      (parts) => ({ ...parts, delays: delaysOf([[1, 1, 64, [0, 0, -3, 0, 0, 0, 0, 0]]]) }),
+      'least stage delay below zero (ps)',
     ],
     [
       'a clock lost from the stack',
