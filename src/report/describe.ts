@@ -1,7 +1,7 @@
 import type { AddressBit, Description } from '../config/describe.js';
 import { TIMING_NAMES } from '../config/package.js';
-import { formatBandwidth, formatBytes, formatFlops, formatPercent, formatTime } from '../units.js';
-import { facts, type Ink, ink, plain, type TextStyle, table, wrap } from './style.js';
+import { formatBandwidth, formatBytes, formatPercent, formatTime } from '../units.js';
+import { facts, type Ink, ink, plain, prefixed, type TextStyle, table, wrap } from './style.js';
 
 type Memory = Description['memory'][number];
 
@@ -39,13 +39,13 @@ function dies({ compute, domains }: Description): string {
     String(die.window),
     String(die.buffering),
     formatBytes(die.requestBytes),
-    `${formatTime(die.clockPs)}`,
+    formatTime(die.clockPs),
     Object.entries(die.peakFlops)
-      .map(([format, rate]) => `${plain(format)} ${formatFlops(rate)}`)
+      .map(([format, rate]) => `${plain(format)} ${prefixed(rate)}`)
       .join(', '),
     formatBytes(domains[d].capacity),
   ]);
-  return table(['die', 'engines', 'window', 'tiles', 'request', 'clock', 'peak', 'memory'], rows, [6]);
+  return table(['die', 'engines', 'window', 'tiles', 'request', 'clock', 'peak FLOP/s', 'memory'], rows, [6]);
 }
 
 function memorySection(memory: Memory, { chalk, width }: Ink): string {
@@ -75,12 +75,14 @@ function memorySection(memory: Memory, { chalk, width }: Ink): string {
     width,
     '  ',
   );
-  const room = Math.max(30, width - 32);
+  // a source that several timings share is written once
+  const sources = [...new Set(TIMING_NAMES.map((name) => memory.timings[name].source))];
   const rows = TIMING_NAMES.map((name) => {
     const { ck, ns, source } = memory.timings[name];
-    return [name, String(ck), formatNs(ns), plain(source, room)];
+    return [name, String(ck), formatNs(ns), `[${sources.indexOf(source) + 1}]`];
   });
-  const timings = table(['timing', 'ck', 'ns', 'source'], rows, [3]);
+  const timings = table(['timing', 'ck', 'ns', 'source'], rows);
+  const legend = sources.map((source, i) => `  ${wrap(`[${i + 1}] ${plain(source)}`, width - 2, '      ')}`);
   const notes = memory.notes.map((note) => `  ${wrap(plain(note), width - 2, '  ')}`);
   return [
     `\n${chalk.bold(`Memory ${plain(memory.name)}: ${memory.device}`)}`,
@@ -88,6 +90,7 @@ function memorySection(memory: Memory, { chalk, width }: Ink): string {
     rules,
     ...notes,
     timings,
+    ...legend,
   ].join('\n');
 }
 

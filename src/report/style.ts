@@ -1,5 +1,6 @@
 import { Chalk, type ChalkInstance } from 'chalk';
 import Table from 'cli-table3';
+import { formatFlops } from '../units.js';
 
 /** How a report for people looks: whether it has colours, and how wide it may be. */
 export interface TextStyle {
@@ -61,6 +62,11 @@ export function facts(items: readonly string[], width: number, indent: string): 
     }
   }
   return [...lines, line].map((text) => indent + text).join('\n');
+}
+
+/** FLOP/s under a heading that says so: 1.55 P. */
+export function prefixed(flopsPerS: number): string {
+  return formatFlops(flopsPerS).replace('FLOP/s', '').trimEnd();
 }
 
 const NO_BORDER = {

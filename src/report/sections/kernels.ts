@@ -1,6 +1,6 @@
 import type { KernelResult, Result } from '../../analysis/result-schema.js';
-import { formatBandwidth, formatFlops, formatPercent, formatTime } from '../../units.js';
-import { facts, type Ink, plain, table } from '../style.js';
+import { formatBandwidth, formatPercent, formatTime } from '../../units.js';
+import { facts, type Ink, plain, prefixed, table } from '../style.js';
 
 const NAME = 18; // columns
 const MOST = 20; // kernels on the page
@@ -55,11 +55,6 @@ function row(kernel: KernelResult): string[] {
     formatPercent(kernel.compute_utilization),
     estimate === null || kernel.duration_ps === 0 ? '-' : times(kernel.duration_ps / estimate),
   ];
-}
-
-/** FLOP/s under a heading that says so: 1.55 P. */
-function prefixed(flopsPerS: number): string {
-  return formatFlops(flopsPerS).replace('FLOP/s', '').trimEnd();
 }
 
 function times(ratio: number): string {
