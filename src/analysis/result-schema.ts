@@ -93,7 +93,9 @@ const kernel = z.strictObject({
     ),
   compute_utilization: ratio.describe('engine compute time over engines of its dies x its duration'),
   mean_read_latency_ps: ps.nullable(),
-  estimate_ps: ps.nullable().describe("the trace's own estimate, all launches together"),
+  estimate_ps: ps
+    .nullable()
+    .describe("the trace's own estimate, all launches together; null when it has none or not all are done"),
 });
 
 const direction = z.strictObject({ payload_bytes: bytes, flits: count, utilization: ratio });

@@ -9,14 +9,15 @@ import type { KernelResult } from './result-schema.js';
 export interface KernelFacts {
   readonly format: string; // '' when the trace names none
   readonly dies: readonly number[]; // compute dies it runs on
-  readonly estimatePs: number; // of one launch; 0: none
+  readonly estimatePs: number; // of all its launches; 0: none
+  readonly launches: number; // asked for; 0: not known
 }
 
 /** Facts of the kernel with index `k`; rows of an access trace carry no format and may run anywhere. */
 export function kernelFacts(pkg: Package, trace: Trace, k: number): KernelFacts {
-  if (trace.kind === 'access') return { format: '', dies: allDies(pkg), estimatePs: 0 };
-  const { format, die, estimatePs } = trace.kernels[k];
-  return { format, dies: die < 0 ? allDies(pkg) : [die], estimatePs };
+  if (trace.kind === 'access') return { format: '', dies: allDies(pkg), estimatePs: 0, launches: 0 };
+  const { format, die, estimatePs, repeat } = trace.kernels[k];
+  return { format, dies: die < 0 ? allDies(pkg) : [die], estimatePs: estimatePs * repeat, launches: repeat };
 }
 
 /**
@@ -119,6 +120,6 @@ export function kernelResult(
     roofline_ratio: line.ratio,
     compute_utilization: durationPs > 0 ? record.computePs / (engines * durationPs) : 0,
     mean_read_latency_ps: delays !== undefined && delays.reads > 0 ? delays.readLatencyPs / delays.reads : null,
-    estimate_ps: facts.estimatePs > 0 ? facts.estimatePs * record.launches : null,
+    estimate_ps: facts.estimatePs > 0 && record.launches === facts.launches ? facts.estimatePs : null,
   };
 }

@@ -75,7 +75,7 @@ function judge({ achieved, bound, limit, computeUtilization, stack }: Standing):
     return { sentence: `What binds was not recorded: ${standing}.`, binds: 'nothing', distance_ratio: distance };
   if (first.share >= LEADING_SHARE && (second === undefined || first.share >= LEADING_FACTOR * second.share)) {
     const [name, meaning] = CAUSES[first.name];
-    const sentence = `Mostly ${name} binds: ${meaning}, for ${formatPercent(first.share)} of the DRAM clocks; ${standing}.`;
+    const sentence = `What binds most: ${name} (${meaning}), ${formatPercent(first.share)} of the DRAM clocks; ${standing}.`;
     return { sentence, binds: first.name, distance_ratio: distance };
   }
   const leading = losses.slice(0, 3).map(({ name, share }) => `${CAUSES[name][0]} (${formatPercent(share)})`);

@@ -1,7 +1,8 @@
 import { describe, expect, test } from 'vitest';
 import { boundsOf } from '../../src/analysis/index.js';
-import { peakFlops, roofline } from '../../src/analysis/roofline.js';
+import { kernelFacts, kernelResult, peakFlops, roofline } from '../../src/analysis/roofline.js';
 import { smallPackage } from '../helpers/packages.js';
+import { kernelDone, kernelRow, traceOf } from './recording.js';
 
 const DRAM = { peak: 1e12, refreshDerated: 0.9e12, link: 2e12, bound: 0.9e12, limit: 'dram' } as const;
 
@@ -51,6 +52,15 @@ describe('roofline', () => {
     expect(peakFlops(pkg, [0], 'bf16')).toBe(100e12);
     expect(peakFlops(pkg, [0], '')).toBe(200e12);
     expect(peakFlops(pkg, [0], 'int4')).toBe(0);
+  });
+});
+
+describe('a kernel of the trace', () => {
+  test('its estimate counts for all launches, and only once all are done', () => {
+    const pkg = smallPackage();
+    const facts = kernelFacts(pkg, traceOf([kernelRow('k', { repeat: 3, estimatePs: 100 })]), 0);
+    expect(kernelResult(pkg, kernelDone('k', { launches: 3 }), facts, undefined).estimate_ps).toBe(300);
+    expect(kernelResult(pkg, kernelDone('k', { launches: 2 }), facts, undefined).estimate_ps).toBeNull();
   });
 });
 

@@ -135,6 +135,7 @@ describe('terminal report', () => {
     const result = buildResult(pkg, traceOf([kernelRow('idle')]), ORIGIN, { ...empty, partial: true }, delays);
     const text = textReport(result, PLAIN);
     expect(text).not.toMatch(/NaN|Infinity|undefined/);
+    expect(text).toMatch(/idle +not begun/);
     expect(jsonReport(result)).not.toContain('null,\n  "bandwidth"');
   });
 });

@@ -38,6 +38,12 @@ function longest(kernels: readonly KernelResult[]): KernelResult[] {
 }
 
 function row(kernel: KernelResult): string[] {
+  return [plain(kernel.name, NAME), ...(kernel.start_ps === null ? NOT_BEGUN : figures(kernel))];
+}
+
+const NOT_BEGUN = ['not begun', ...Array<string>(7).fill('-')];
+
+function figures(kernel: KernelResult): string[] {
   const {
     attained_flops_per_s: flops,
     bound_flops_per_s: bound,
@@ -45,7 +51,6 @@ function row(kernel: KernelResult): string[] {
     estimate_ps: estimate,
   } = kernel;
   return [
-    plain(kernel.name, NAME),
     formatTime(kernel.duration_ps),
     formatBandwidth(kernel.attained_bytes_per_s),
     flops === null ? '-' : prefixed(flops),
