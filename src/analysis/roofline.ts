@@ -110,6 +110,8 @@ export function kernelResult(
     write_bytes: record.writeBytes,
     useful_bytes: usefulBytes,
     moved_bytes: movedBytes,
+    moved_read_bytes: record.movedReadBytes,
+    moved_write_bytes: record.movedWriteBytes,
     intensity_useful: line.intensityUseful,
     intensity_moved: line.intensityMoved,
     limit: line.limit,
