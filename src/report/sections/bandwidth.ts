@@ -56,9 +56,9 @@ const LABELS: Readonly<Record<StackClass, string>> = {
 };
 
 /** Where every clock of the data buses went, largest first after the data itself, in two columns. */
-export function stackSection({ bandwidth_stack: stack }: Result, { chalk }: Ink): string {
+export function stackSection({ bandwidth_stack: stack, dram }: Result, { chalk }: Ink): string {
   const title = chalk.bold('Where the DRAM clocks went');
-  if (stack.total === 0) return `${title}\n  no clock passed`;
+  if (stack.total === 0) return `${title}\n  ${dram.elapsed_ck === 0 ? 'no clock passed' : 'not recorded'}`;
   const parts = STACK_CLASSES.map((name) => ({ name, share: stack[name] / stack.total }));
   const data = parts.slice(0, 2);
   const losses = parts.slice(2).filter(({ share }) => share > 0);
