@@ -73,7 +73,7 @@ export function bandwidthByPlace(pkg: Package, { dram, makespanPs, elapsedCk }: 
 }
 
 /** Queue occupancy: mean entries of one pseudo-channel over time, and the deepest any of them was. */
-export function queueOccupancy(pkg: Package, { dram, elapsedCk }: Recording): Result['queue'] {
+export function queueOccupancy(pkg: Package, { dram, elapsedCk }: Recording): Result['queues'] {
   const of = (places: readonly Place[], integral: Float64Array, deepest: Int32Array) => ({
     mean_entries: elapsedCk > 0 ? sum(places.map(({ p }) => integral[p])) / (elapsedCk * places.length) : 0,
     max_entries: Math.max(0, ...places.map(({ p }) => deepest[p])),

@@ -83,7 +83,7 @@ const kernel = z.strictObject({
   moved_write_bytes: bytes,
   intensity_useful: ratio.nullable().describe('FLOP per useful byte; null without flops or bytes'),
   intensity_moved: ratio.nullable().describe('FLOP per moved byte'),
-  limit: z.enum(['compute', 'dram', 'link', 'none']).describe('which ceiling the bound is'),
+  bound_by: z.enum(['compute', 'dram', 'link', 'none']).describe('which ceiling the bound is'),
   bound_flops_per_s: z.number().min(0).nullable().describe('roofline bound over moved bytes; null without flops'),
   attained_flops_per_s: z.number().min(0).nullable(),
   bound_bytes_per_s: rate.describe('the bandwidth ceiling of the dies it ran on, for its mix of reads and writes'),
@@ -110,7 +110,7 @@ const result = z.strictObject({
     sentence: z.string(),
     binds: z.string().describe("what binds: 'dram', 'compute', 'link', a class of the bandwidth stack, or 'nothing'"),
     distance_ratio: ratio.describe(
-      'achieved bandwidth over bound_bytes_per_s, or compute utilization where compute binds',
+      'achieved bandwidth over the bound of the stacks in use, or compute utilization where compute binds',
     ),
   }),
   makespan_ps: ps,
@@ -122,7 +122,7 @@ const result = z.strictObject({
   ),
   delay: known(STAGES, distribution).describe('of reads'),
   write_delay: known(STAGES, distribution).describe('of writes, until their acknowledgement'),
-  queue: queues.extend({ stacks: z.array(queues.extend({ stack: count })) }),
+  queues: queues.extend({ stacks: z.array(queues.extend({ stack: count })) }),
   compute: z.strictObject({
     utilization: ratio.describe('engine compute time over engines x makespan'),
     dies: z.array(

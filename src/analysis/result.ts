@@ -1,5 +1,5 @@
 import type { Package } from '../config/package.js';
-import { type Recording, type RunOptions, STACK_CLASSES, STAGES } from '../engine/recording.js';
+import { type Recording, type RunOptions, STAGES } from '../engine/recording.js';
 import type { Trace, TraceFacts } from '../trace/batch.js';
 import { allDies, boundsOf } from './bounds.js';
 import { checksOf } from './checks.js';
@@ -8,6 +8,7 @@ import type { Histogram } from './histogram.js';
 import { bandwidthByPlace, bandwidthStackOf, queueOccupancy } from './places.js';
 import { type Distribution, type LatencyStack, RESULT_FORMAT, RESULT_VERSION, type Result } from './result-schema.js';
 import { kernelFacts, kernelResult } from './roofline.js';
+import { standingOf } from './standing.js';
 import { sum } from './sums.js';
 import { verdict } from './verdict.js';
 
@@ -40,14 +41,7 @@ export function buildResult(pkg: Package, trace: Trace, origin: Origin, recordin
     format: RESULT_FORMAT,
     version: RESULT_VERSION,
     partial: recording.partial,
-    verdict: verdict({
-      partial: recording.partial,
-      achieved: rate(movedReads + movedWrites),
-      bound: bounds.bound,
-      limit: bounds.limit,
-      computeUtilization: compute.utilization,
-      stack: STACK_CLASSES.map((name) => stack[name]),
-    }),
+    verdict: verdict(standingOf(pkg, recording)),
     makespan_ps: makespanPs,
     bandwidth: {
       achieved_bytes_per_s: rate(movedReads + movedWrites),
@@ -67,7 +61,7 @@ export function buildResult(pkg: Package, trace: Trace, origin: Origin, recordin
     latency_stack: latencyStack(delays),
     delay: byStage(delays.reads),
     write_delay: byStage(delays.writes),
-    queue: queueOccupancy(pkg, recording),
+    queues: queueOccupancy(pkg, recording),
     compute,
     kernels: kernels.map((kernel, k) => kernelResult(pkg, kernel, kernelFacts(pkg, trace, k), delays.kernels[k])),
     dram: {

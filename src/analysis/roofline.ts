@@ -114,7 +114,7 @@ export function kernelResult(
     moved_write_bytes: record.movedWriteBytes,
     intensity_useful: line.intensityUseful,
     intensity_moved: line.intensityMoved,
-    limit: line.limit,
+    bound_by: line.limit,
     bound_flops_per_s: line.boundFlopsPerS,
     attained_flops_per_s: line.attainedFlopsPerS,
     bound_bytes_per_s: bounds.bound,

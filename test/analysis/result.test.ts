@@ -67,7 +67,7 @@ describe('result', () => {
       duration_ps: 800_000,
       estimate_ps: 500_000,
       flops: 0,
-      limit: 'dram',
+      bound_by: 'dram',
       bound_flops_per_s: null,
     });
     expect(gather.attained_bytes_per_s).toBe(4096 / 0.8e-6);
@@ -80,9 +80,9 @@ describe('result', () => {
   });
 
   test('queues, links and DRAM counters', () => {
-    const { queue, links, dram, pkg } = { ...resultOf(), pkg: made().pkg };
-    expect(queue.read).toEqual({ mean_entries: 0.5, max_entries: 31 });
-    expect(queue.stacks[0].write).toEqual({ mean_entries: 0.25, max_entries: 2 });
+    const { queues, links, dram, pkg } = { ...resultOf(), pkg: made().pkg };
+    expect(queues.read).toEqual({ mean_entries: 0.5, max_entries: 31 });
+    expect(queues.stacks[0].write).toEqual({ mean_entries: 0.25, max_entries: 2 });
     expect(links[0].up.utilization).toBeCloseTo((40 * pkg.links[0].flitPs) / 1e6, 12);
     expect(dram).toMatchObject({
       reads: 128,

@@ -25,7 +25,7 @@ export function kernelSection({ kernels }: Result, { chalk }: Ink): string {
   const [first, ...rest] = text.split('\n');
   const lines = [chalk.bold(first.slice(2)), ...rest];
   const more = kernels.length - shown.length;
-  if (shown.some((kernel) => kernel.limit === 'dram' && (kernel.roofline_ratio ?? 0) > 1)) {
+  if (shown.some((kernel) => kernel.bound_by === 'dram' && (kernel.roofline_ratio ?? 0) > 1)) {
     lines.push('  above 100 %: refreshes of that time were postponed; the bound is that of a long run');
   }
   if (more > 0) lines.push(`  and ${more} shorter ones (--json has them all)`);
@@ -55,7 +55,7 @@ function figures(kernel: KernelResult): string[] {
     formatBandwidth(kernel.attained_bytes_per_s),
     flops === null ? '-' : prefixed(flops),
     bound === null ? formatBandwidth(kernel.bound_bytes_per_s) : prefixed(bound),
-    kernel.limit === 'none' ? '-' : kernel.limit,
+    kernel.bound_by === 'none' ? '-' : kernel.bound_by,
     ratio === null ? '-' : formatPercent(ratio),
     formatPercent(kernel.compute_utilization),
     estimate === null || kernel.duration_ps === 0 ? '-' : times(kernel.duration_ps / estimate),

@@ -5,7 +5,7 @@ import { facts, type Ink, table } from '../style.js';
 
 /** Read latency with the delay of every stage: the means add up to the mean latency. */
 export function latencySection(
-  { read_latency: latency, delay, write_delay, queue, dram }: Result,
+  { read_latency: latency, delay, write_delay, queues, dram }: Result,
   { chalk, width }: Ink,
 ): string {
   const lines = [chalk.bold('Read latency and queueing delay')];
@@ -30,7 +30,7 @@ export function latencySection(
   const writes = write_delay.window_wait.count;
   const hits = dram.row_hits + dram.row_misses + dram.row_conflicts;
   const notes = [
-    `queue entries a pseudo-channel: read ${entries(queue.read)}, write ${entries(queue.write)}`,
+    `queue entries a pseudo-channel: read ${entries(queues.read)}, write ${entries(queues.write)}`,
     ...(writes > 0
       ? [`writes acknowledged after ${formatTime(STAGES.reduce((sum, s) => sum + write_delay[s].mean_ps, 0))}`]
       : []),
@@ -43,7 +43,7 @@ export function latencySection(
   return [...lines, facts(notes, width, '  ')].join('\n');
 }
 
-function entries({ mean_entries, max_entries }: Result['queue']['read']): string {
+function entries({ mean_entries, max_entries }: Result['queues']['read']): string {
   return `${mean_entries.toFixed(1)} (most ${max_entries})`;
 }
 
