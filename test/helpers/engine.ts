@@ -31,10 +31,12 @@ export interface Row {
   readonly after?: number;
   readonly tile?: number;
   readonly flops?: number;
+  readonly kernel?: number; // index into the kernel names
+  readonly die?: number;
 }
 
 /** An access trace from rows in memory; a generator is read lazily. Columns are there when the first row has them. */
-export function accessTrace(rows: Iterable<Row>, kernel = 'test'): AccessTrace {
+export function accessTrace(rows: Iterable<Row>, kernel: string | string[] = 'test'): AccessTrace {
   const iterator = rows[Symbol.iterator]();
   let next = iterator.next();
   const has = (key: keyof Row): boolean => !next.done && next.value[key] !== undefined;
@@ -46,7 +48,7 @@ export function accessTrace(rows: Iterable<Row>, kernel = 'test'): AccessTrace {
     address: new Float64Array(SIZE),
     bytes: new Float64Array(SIZE),
     timePs: has('timePs') ? new Float64Array(SIZE) : null,
-    die: null,
+    die: column('die'),
     engine: column('engine'),
     kernel: new Int32Array(SIZE),
     tile: column('tile'),
@@ -56,7 +58,7 @@ export function accessTrace(rows: Iterable<Row>, kernel = 'test'): AccessTrace {
   return {
     kind: 'access',
     file: 'memory.csv',
-    kernelNames: [kernel],
+    kernelNames: [kernel].flat(),
     hasTime: has('timePs'),
     facts: () => ({ rows: 0, skippedRows: 0, hash: '' }),
     async *batches() {
@@ -69,6 +71,8 @@ export function accessTrace(rows: Iterable<Row>, kernel = 'test'): AccessTrace {
           batch.address[i] = row.address;
           batch.bytes[i] = row.bytes;
           if (batch.timePs) batch.timePs[i] = row.timePs ?? 0;
+          batch.kernel[i] = row.kernel ?? 0;
+          if (batch.die) batch.die[i] = row.die ?? -1;
           if (batch.engine) batch.engine[i] = row.engine ?? -1;
           if (batch.tile) batch.tile[i] = row.tile ?? -1;
           if (batch.flops) batch.flops[i] = row.flops ?? 0;
