@@ -1,7 +1,7 @@
 import { describe, expect, test } from 'vitest';
 import { type Result, resultProblems } from '../../src/analysis/index.js';
 import { STAGES } from '../../src/engine/recording.js';
-import { simulate } from '../../src/index.js';
+import { loadPackage, simulate } from '../../src/index.js';
 import { jsonReport } from '../../src/report/index.js';
 import { accessTrace, kernelTrace, type Row } from '../helpers/engine.js';
 import { smallPackage } from '../helpers/packages.js';
@@ -80,5 +80,40 @@ describe('results of real runs', () => {
     const rows = Array.from({ length: 2000 }, (_, i): Row => ({ op: 'R', address: i * 256, bytes: 256 }));
     const { verdict } = await simulate(pkg, accessTrace(rows));
     expect(['starved_window', 'starved_imbalance']).toContain(verdict.binds);
+  });
+
+  test('short requests fill a link with headers: the link binds, far below its payload ceiling', async () => {
+    const pkg = smallPackage('links.0.lanes=64');
+    const rows = Array.from({ length: 20_000 }, (_, i): Row => ({ op: 'R', address: i * 256, bytes: 32 }));
+    const { verdict, links, bandwidth } = await simulate(pkg, accessTrace(rows));
+    expect(Math.max(links[0].up.utilization, links[0].down.utilization)).toBeGreaterThan(0.9);
+    expect(bandwidth.achieved_bytes_per_s).toBeLessThan(0.9 * bandwidth.bound_bytes_per_s);
+    expect(verdict.binds).toBe('link');
+    expect(verdict.sentence).toContain('link of link was busy');
+  });
+
+  test('work on one die of two is judged by the stacks of that die', async () => {
+    const pkg = loadPackage('configs/wagtail.yaml');
+    const stacks = pkg.links.filter((link) => link.die === 0).length;
+    const rows = Array.from({ length: 50_000 }, (_, i): Row => ({ op: 'R', address: i * 256, bytes: 256 }));
+    const { verdict, bandwidth } = await simulate(pkg, accessTrace(rows));
+    expect(verdict.sentence).toContain(`of the ${stacks} of ${pkg.links.length} stacks in use`);
+    expect(verdict.distance_ratio).toBeCloseTo(
+      (bandwidth.achieved_bytes_per_s / bandwidth.bound_bytes_per_s) * (pkg.links.length / stacks),
+      9,
+    );
+  });
+
+  test('a kernel that fits one tile computes on one engine, and the verdict says that this binds', async () => {
+    const pkg = smallPackage();
+    const one = `kernel,stream,format,flops,read,write,read_pattern,write_pattern,tile,repeat,estimate_us
+one,main,bf16,10 GFLOP,4 KiB,0,sequential,,4 KiB,1,
+`;
+    const { verdict, compute, kernels: all } = await simulate(pkg, await kernelTrace(pkg, one));
+    expect(compute.utilization).toBeCloseTo(1 / 4, 3); // one of four engines
+    expect(verdict.sentence).toContain('Compute binds on some engines');
+    // 4 x 10 GFLOP / 100 TFLOP/s = 400 us: an engine has a quarter of the die's peak
+    expect(all[0].duration_ps / 400e6).toBeCloseTo(1, 2);
+    expect(all[0].bound_by).toBe('compute');
   });
 });
