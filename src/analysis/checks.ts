@@ -52,6 +52,18 @@ export function checksOf(pkg: Package, recording: Recording, delays: Delays): Ch
   // the last clock of a run may be a fraction of one
   const couldMove = (peakBytesPerS * organisation.stacks * (makespanPs + pkg.memory[0].clockPs)) / 1e12;
   within('bytes moved above the DRAM peak', moved - couldMove, ROUNDING * couldMove);
+  // payload never passes what is left of a flit beside its overhead
+  let overfull = 0;
+  recording.links.forEach((link, s) => {
+    const { flitBytes, flitOverheadBytes } = pkg.links[s];
+    const room = flitBytes - flitOverheadBytes;
+    overfull = Math.max(
+      overfull,
+      link.payloadBytesDown - link.flitsDown * room,
+      link.payloadBytesUp - link.flitsUp * room,
+    );
+  });
+  within('link payload above what its flits hold (bytes)', overfull, 0);
   const mostCompute = recording.engineComputePs.reduce((most, ps) => Math.max(most, ps), 0);
   within('busiest engine above the makespan (ps)', mostCompute - makespanPs, ROUNDING * makespanPs + 1);
   if (!partial) {

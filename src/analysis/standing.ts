@@ -4,8 +4,8 @@ import { boundsOfLinks } from './bounds.js';
 import { sum } from './sums.js';
 
 /**
- * The figures the verdict is derived from. Stacks that moved nothing are left out of the bound and of the bandwidth stack: what
- * nobody asked anything of says nothing about what binds.
+ * The figures the verdict is derived from. Stacks that moved nothing, or next to nothing, are left out of the bound and of the
+ * bandwidth stack: what nobody asked anything of says nothing about what binds.
  */
 export interface Standing {
   readonly partial: boolean;
@@ -23,7 +23,9 @@ export interface Standing {
   readonly stack: readonly number[];
 }
 
-const ALIKE = 0.9; // of the busiest link
+// common practice, no source
+const IN_USE = 0.01; // of the bytes of the busiest stack
+const ALIKE = 0.9; // of the busiest link's time
 
 export function standingOf(pkg: Package, recording: Recording): Standing {
   const { kernels, dram, engineComputePs, makespanPs, partial } = recording;
@@ -32,10 +34,12 @@ export function standingOf(pkg: Package, recording: Recording): Standing {
   const share = (ps: number): number => (makespanPs > 0 ? ps / makespanPs : 0);
 
   const perStack = dram.reads.length / pkg.links.length; // pseudo-channels
-  const used = pkg.links.filter(({ stack }) => {
+  const atoms = pkg.links.map(({ stack }) => {
     const [from, to] = [stack * perStack, (stack + 1) * perStack];
-    return sum(dram.reads.subarray(from, to)) + sum(dram.writes.subarray(from, to)) > 0;
+    return sum(dram.reads.subarray(from, to)) + sum(dram.writes.subarray(from, to));
   });
+  const least = IN_USE * Math.max(...atoms);
+  const used = pkg.links.filter(({ stack }) => atoms[stack] > 0 && atoms[stack] >= least);
   const { bound, limit } = boundsOfLinks(pkg, used, reads, writes);
 
   const rowOfClasses = perStack * STACK_CLASSES.length;

@@ -32,11 +32,14 @@ export function plain(text: string, most = Number.POSITIVE_INFINITY): string {
   return letters.length <= most ? printable : `${letters.slice(0, most - 1).join('')}…`;
 }
 
+/** Blanks where a line may break: not between a number and its per cent or bytes a second. */
+const BREAKS = / (?!%|[kMGT]?B\/s)/;
+
 /** Breaks text at blanks into lines of at most `width` columns; lines after the first are indented. */
 export function wrap(text: string, width: number, indent = ''): string {
   const lines: string[] = [];
   let line = '';
-  for (const word of text.split(' ')) {
+  for (const word of text.split(BREAKS)) {
     const room = width - (lines.length > 0 ? indent.length : 0);
     if (line !== '' && line.length + 1 + word.length > room) {
       lines.push(line);

@@ -158,6 +158,11 @@ describe('checks', () => {
       'busiest link above the makespan (ps)',
     ],
     [
+      'more payload than flits',
+      recording((r) => ({ links: [{ ...r.links[0], payloadBytesDown: 1e6 }] })),
+      'link payload above what its flits hold (bytes)',
+    ],
+    [
       'a forwarded read too many',
       recording((r) => ({ dram: { ...r.dram, forwarded: new Float64Array(32).fill(1) } })),
       'reads served from write queues',

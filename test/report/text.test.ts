@@ -79,6 +79,25 @@ describe('terminal report', () => {
     expect(textReport(eleven, PLAIN).split('\n').length).toBeLessThanOrEqual(48);
   });
 
+  test('a line never breaks between a number and its unit', () => {
+    const result = sample();
+    const sentence = `${'x'.repeat(96)} 5.25 % and ${'x'.repeat(85)} 5.00 GB/s.`;
+    const text = textReport({ ...result, verdict: { ...result.verdict, sentence } }, PLAIN);
+    expect(text).toContain('\n5.25 % and');
+    expect(text).toContain('\n5.00 GB/s.');
+  });
+
+  test('classes below a thousandth of the clocks are one line, and the shares still add up', () => {
+    const result = sample();
+    const stack = { ...result.bandwidth_stack, turnaround: 20, column_gap: 20, starved_drain: 32 * 400 - 40 };
+    const text = textReport({ ...result, bandwidth_stack: stack }, PLAIN);
+    expect(text).not.toMatch(/turnaround|column gap/); // 20 of 51,200 clocks each
+    expect(text).toMatch(/other \(2\) +0\.1 %/);
+    const section = text.slice(text.indexOf('Where the DRAM'), text.indexOf('Read latency'));
+    const shares = [...section.matchAll(/(\d+\.\d) %/g)].map(([, share]) => Number(share));
+    expect(shares.reduce((a, b) => a + b, 0)).toBeCloseTo(100, 0);
+  });
+
   test('of very many kernels the longest are shown and the rest counted', () => {
     const result = sample();
     const kernels = Array.from({ length: 50 }, (_, i) => ({ ...result.kernels[0], name: `k${i}.`, duration_ps: i }));

@@ -20,6 +20,12 @@ export function bandwidthSection({ bandwidth, links, makespan_ps }: Result, { ch
         `write ${formatBandwidth(bandwidth.write_bytes_per_s)}`,
         `useful ${formatBandwidth(bandwidth.useful_bytes_per_s)}`,
         `a stack ${formatBandwidth(Math.min(...rates))} to ${formatBandwidth(Math.max(...rates))}`,
+      ],
+      width,
+      '  ',
+    ),
+    facts(
+      [
         `peak ${formatBandwidth(bandwidth.peak_bytes_per_s)}`,
         `refresh-derated ${formatBandwidth(bandwidth.refresh_derated_bytes_per_s)}`,
         `link ceiling for this mix ${formatBandwidth(bandwidth.link_ceiling_bytes_per_s)}`,
