@@ -28,8 +28,11 @@ export const hbm2: DevicePreset = {
     atom_bytes: { value: 32, source: `${GUIDE}: BL4 x 64 bit` },
   },
   timings: {
-    tRC: { value: '48 ck', source: `${FCCM}: four banks of a group at 13.33 ns a request` },
-    tRAS: { value: '34 ck', source: 'tRC - tRP' },
+    tRC: {
+      value: '44 ck',
+      source: `${FCCM}: four banks of a group at 13.33 ns a request, less the share of refresh, about 8 % (an interpretation)`,
+    },
+    tRAS: { value: '30 ck', source: 'tRC - tRP' },
     tRP: { value: '14 ck', source: `${FCCM}: miss less closed, 15.6 ns` },
     tRCDRD: { value: '14 ck', source: `${FCCM}: closed less hit, 15.6 ns` },
     tRCDWR: { value: '14 ck', source: 'as tRCDRD, from memory' },
