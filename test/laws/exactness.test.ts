@@ -1,9 +1,9 @@
 import fc from 'fast-check';
 import { expect, it } from 'vitest';
 import type { Package } from '../../src/config/package.js';
-import { STACK_CLASSES } from '../../src/engine/index.js';
 import type { Trace } from '../../src/trace/batch.js';
 import { accessTrace, kernelTrace, type LoggedCommand, type Outcome, simulate } from '../helpers/engine.js';
+import { everyClockIsAccountedFor } from './accounts.js';
 import { anyDesign, anyReplay, anyWork, build, type Design, finished, PLAIN, REFRESHES, rowsOf } from './cases.js';
 
 /*
@@ -47,21 +47,6 @@ async function sameInAnyWindow(
   }
   everyClockIsAccountedFor(pkg, whole.recording);
   return whole.recording;
-}
-
-function everyClockIsAccountedFor(pkg: Package, recording: Outcome['recording']): void {
-  const classes = STACK_CLASSES.length;
-  const { organisation: o } = pkg.memory[0];
-  recording.dram.reads.forEach((reads, p) => {
-    const stack = [...recording.bandwidthStack.subarray(p * classes, (p + 1) * classes)];
-    for (const ck of stack) {
-      expect(ck).toBeGreaterThanOrEqual(0);
-      expect(Number.isInteger(ck)).toBe(true);
-    }
-    expect(stack.reduce((a, b) => a + b, 0)).toBe(recording.elapsedCk);
-    expect(stack[STACK_CLASSES.indexOf('read_data')]).toBe(reads * o.burst_ck);
-    expect(stack[STACK_CLASSES.indexOf('write_data')]).toBe(recording.dram.writes[p] * o.burst_ck);
-  });
 }
 
 // fails: see asleep.test.ts

@@ -2,6 +2,7 @@ import fc from 'fast-check';
 import { expect, it } from 'vitest';
 import { STAGES } from '../../src/engine/index.js';
 import { accessTrace, simulate, sum } from '../helpers/engine.js';
+import { everyClockIsAccountedFor } from './accounts.js';
 import { anyDesign, anyReplay, anyWork, build, type Finished, finished, rowsOf } from './cases.js';
 
 const [WAIT, DOWN_QUEUE, DOWN_TRANSIT, QUEUE, PREPARATION, DATA, UP_QUEUE, UP_TRANSIT] = STAGES.keys();
@@ -160,6 +161,7 @@ it.fails('nothing runs above its ceiling', async () => {
       const [memory] = pkg.memory;
       const { organisation: o } = memory;
       const { recording } = await simulate(pkg, accessTrace(rowsOf(pkg, work), ['even', 'odd']), { replay });
+      everyClockIsAccountedFor(pkg, recording);
       const seconds = recording.makespanPs / 1e12;
       const moved = sum(recording.kernels.map((k) => k.movedReadBytes + k.movedWriteBytes));
       expect(moved / seconds).toBeLessThanOrEqual(memory.peakBytesPerS * o.stacks);
