@@ -40,7 +40,7 @@ export async function program(argv: readonly string[], session: Session): Promis
       throw own ? error : usageError(complaint ?? error.message, argv, COMMANDS);
     })
     .epilogue(
-      'Exit codes: 0 fine, 1 audit found violations, 2 the input is wrong, 3 the program’s own checks\nfailed, 4 the system failed, 130 interrupted.',
+      'Exit codes: 0 fine, 2 the input is wrong, 3 the program’s own checks failed, 4 the system\nfailed, 130 interrupted.',
     );
   for (const command of COMMANDS) command.add(cli, session);
   await cli.parseAsync();

@@ -8,6 +8,7 @@ import { build, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 beforeAll(build, 120_000);
 
+const COMMANDS = ['run', 'describe', 'synth', 'schema'];
 const TRACE = join(ROOT, 'traces/wagtail-step.csv');
 
 /** What must be refused: the arguments, the exit code, and what the message must say. */
@@ -118,13 +119,12 @@ describe('answered', () => {
   test('--help names every command and the exit codes', async () => {
     const { code, out } = await penstock(['--help']);
     expect(code).toBe(0);
-    for (const command of ['run', 'describe', 'synth', 'audit', 'schema'])
-      expect(out).toContain(`penstock ${command} <`);
+    for (const command of COMMANDS) expect(out).toContain(`penstock ${command} <`);
     expect(out).toContain('130 interrupted');
   });
 
   test('the help of every command ends with examples, a line each', async () => {
-    for (const command of ['run', 'describe', 'synth', 'audit', 'schema']) {
+    for (const command of COMMANDS) {
       const { code, out } = await penstock([command, '--help']);
       expect(code).toBe(0);
       // pairs of lines, what it does and the whole command, not broken over two lines
