@@ -1,7 +1,8 @@
 import { expect, it } from 'vitest';
 import type { Package } from '../../src/config/package.js';
+import { STACK_CLASSES, type StackClass } from '../../src/engine/index.js';
 import { stream } from '../../src/random.js';
-import { accessTrace, placer, type Row, type Sample, simulate } from '../helpers/engine.js';
+import { accessTrace, placer, type Row, type Sample, simulate, sum } from '../helpers/engine.js';
 import { lonePackage } from '../helpers/packages.js';
 
 /*
@@ -31,7 +32,13 @@ type Expected = Pick<
   | 'donePs'
 >;
 
-function reference(pkg: Package, steps: readonly Step[]): Expected[] {
+interface Reference {
+  readonly reads: Expected[];
+  waitingCk: number; // from arrival to the column command, all reads together
+  rowCycleCk: number; // the part of it that the bank's own PRE, ACT, tRAS and tRC would have taken alone
+}
+
+function reference(pkg: Package, steps: readonly Step[]): Reference {
   const [{ clockPs, timings, organisation, baseDie, buses }] = pkg.memory;
   const [link] = pkg.links;
   const [die] = pkg.dies;
@@ -54,7 +61,7 @@ function reference(pkg: Package, steps: readonly Step[]): Expected[] {
   };
   const ps = (ck: number): number => Math.ceil(ck * clockPs - 1e-6);
 
-  const out: Expected[] = [];
+  const out: Reference = { reads: [], waitingCk: 0, rowCycleCk: 0 };
   let issue = 0;
   let ready = 0;
   for (const step of steps) {
@@ -63,6 +70,7 @@ function reference(pkg: Package, steps: readonly Step[]): Expected[] {
     const arrive = Math.ceil((linkDone + link.latencyPs + baseDie.ingressPs) / clockPs - 1e-9);
 
     let first = -1; // first command
+    let rowReady = 0; // when the column could go for the bank's sake alone
     const free = (at: number): number => Math.max(at, rowBus, arrive);
     if (open.has(bank) && open.get(bank) !== step.row) {
       const pre = free(
@@ -79,9 +87,10 @@ function reference(pkg: Package, steps: readonly Step[]): Expected[] {
       first = pre;
     }
     if (!open.has(bank)) {
-      let act = 0;
-      if (lastPre.has(bank)) act = (lastPre.get(bank) as number) + t('tRP');
+      let act = arrive;
+      if (lastPre.has(bank)) act = Math.max(act, (lastPre.get(bank) as number) + t('tRP'));
       if (lastAct.has(bank)) act = Math.max(act, (lastAct.get(bank) as number) + t('tRC'));
+      rowReady = act + t('tRCDRD');
       for (const { at, step: other } of acts) {
         const same = other.sid === step.sid && other.bankGroup === step.bankGroup;
         act = Math.max(act, at + (same ? t('tRRD_L') : t('tRRD_S')));
@@ -107,7 +116,10 @@ function reference(pkg: Package, steps: readonly Step[]): Expected[] {
     const up = dataEnd + baseDie.egressPs;
     const back = Math.ceil(up + link.flitPs) + link.latencyPs;
     const done = edge(back);
-    out.push({
+    const waited = read - arrive;
+    out.waitingCk += waited;
+    out.rowCycleCk += waited - Math.min(waited, Math.max(0, Math.floor(read - rowReady)));
+    out.reads.push({
       window_wait: issue - ready,
       down_link_queue: 0,
       down_link_transit: ps(arrive) - issue,
@@ -135,25 +147,42 @@ const VARIANTS: readonly (readonly string[])[] = [
   ],
 ];
 
-it.each(VARIANTS.map((overrides) => [overrides]))(
-  'reads one at a time take what the rules say: %j',
-  async (overrides) => {
-    const pkg = lonePackage('compute.0.engines=1', 'compute.0.window=1', ...overrides);
-    const address = placer(pkg);
-    for (const seed of [1, 2, 3]) {
-      const random = stream('reference', seed);
-      const pick = (n: number): number => Math.floor(random() * n);
-      // few banks and rows, so that hits, misses and conflicts all happen often
-      const steps = Array.from({ length: 400 }, (): Step => {
-        return { sid: pick(2), bankGroup: pick(4), bank: pick(2), row: pick(seed), column: pick(32) };
-      });
-      const rows = steps.map((step): Row => ({ op: 'R', address: address(step), bytes: 1 + pick(32) }));
-      const { samples } = await simulate(pkg, accessTrace(rows), { keepSamples: true });
-      const expected = reference(pkg, steps);
-      expect(samples).toHaveLength(steps.length);
-      samples.forEach(({ op, bytes, ...sample }, i) => {
-        expect({ i, ...sample }).toEqual({ i, ...expected[i] });
-      });
-    }
-  },
-);
+/** The engine's and the reference's answer to the same random reads, few banks and rows so that hits, misses and conflicts are many. */
+async function both(overrides: readonly string[], seed: number) {
+  const pkg = lonePackage('compute.0.engines=1', 'compute.0.window=1', ...overrides);
+  const address = placer(pkg);
+  const random = stream('reference', seed);
+  const pick = (n: number): number => Math.floor(random() * n);
+  const steps = Array.from({ length: 400 }, (): Step => {
+    return { sid: pick(2), bankGroup: pick(4), bank: pick(2), row: pick(seed), column: pick(32) };
+  });
+  const rows = steps.map((step): Row => ({ op: 'R', address: address(step), bytes: 1 + pick(32) }));
+  const { samples, recording } = await simulate(pkg, accessTrace(rows), { keepSamples: true });
+  return { samples, recording, expected: reference(pkg, steps) };
+}
+
+const cases = VARIANTS.map((overrides) => [overrides] as const);
+
+it.each(cases)('reads one at a time take what the rules say: %j', async (overrides) => {
+  for (const seed of [1, 2, 3]) {
+    const { samples, expected } = await both(overrides, seed);
+    expect(samples).toHaveLength(expected.reads.length);
+    samples.forEach(({ op, bytes, ...sample }, i) => {
+      expect({ i, ...sample }).toEqual({ i, ...expected.reads[i] });
+    });
+  }
+});
+
+// fails: activate() in channel.ts takes ACT_READY as when the ACT was wanted, though its request came later; tRCD of a bank that was
+// closed for long is then charged to the command bus (one read on an idle device: 26 ck of command_bus, none of row_cycle)
+it.fails.each(cases)('the bandwidth stack says what they waited for: %j', async (overrides) => {
+  for (const seed of [1, 2, 3]) {
+    const { recording, expected } = await both(overrides, seed);
+    const stack = (name: StackClass): number => recording.bandwidthStack[STACK_CLASSES.indexOf(name)];
+    expect(stack('row_cycle')).toBe(expected.rowCycleCk);
+    const waits = ['row_cycle', 'activate_window', 'column_gap', 'command_bus', 'turnaround'] as const;
+    expect(sum(waits.map(stack))).toBe(expected.waitingCk);
+    const starved = STACK_CLASSES.filter((name) => name.startsWith('starved')).map(stack);
+    expect(sum(starved)).toBe(recording.elapsedCk - expected.waitingCk - stack('read_data'));
+  }
+});

@@ -213,6 +213,26 @@ describe('tiles', () => {
     }
   });
 
+  it('each die has its own number of buffers', async () => {
+    const pkg = build(
+      { ...PLAIN, refresh: 'mode: off', eastStacks: 1 },
+      'compute.0.engines=1',
+      'compute.1.engines=1',
+      'compute.0.buffering=1',
+      'compute.1.buffering=4',
+    );
+    const text =
+      'kernel,stream,format,flops,read,write,read_pattern,write_pattern,tile\nk,main,bf16,24 MFLOP,32 KiB,0,sequential,,2 KiB\n';
+    const { all, collector } = finished();
+    await simulate(pkg, await kernelTrace(pkg, text), { collectors: [collector] });
+    const pcs = pkg.memory[0].organisation.channels * pkg.memory[0].organisation.pseudo_channels;
+    // 24 MFLOP over 2 dies of 8 tiles each: 1.5 MFLOP a tile at 3 FLOP a ps is 500 ns, long after a tile's loads are back
+    const tilePs = 500_000;
+    const inFirstTile = (east: boolean): number =>
+      all.filter((r) => r.p >= pcs === east && issued(r) < tilePs / 2).length;
+    expect([inFirstTile(false), inFirstTile(true)]).toEqual([8, 4 * 8]); // of 256 B, 8 loads a tile
+  });
+
   it('more buffers are never slower, and two overlap loading with computing', async () => {
     const spans: number[] = [];
     for (const buffering of [1, 2, 4]) {
