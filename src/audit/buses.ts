@@ -26,8 +26,6 @@ export class CommandBuses {
     private readonly findings: Findings,
   ) {
     this.held = new Events(2 * shape.channels);
-    // a device whose row commands all last whole clocks has no half clocks to begin one on
-    const rowHalves = buses.separate && [limits.act, limits.pre, limits.ref].some((hold) => hold % 2 !== 0);
     for (const [kind, hold, column] of [
       [ACT, limits.act, false],
       [PRE, limits.pre, false],
@@ -39,7 +37,7 @@ export class CommandBuses {
       this.hold[kind] = hold;
       this.bus[kind] = buses.separate && column ? 1 : 0;
       this.rule[kind] = ruleNumber(buses.separate ? (column ? 'column bus' : 'row bus') : 'command bus');
-      this.wholeClocks[kind] = column || !rowHalves ? 1 : 0;
+      this.wholeClocks[kind] = column ? 1 : 0;
     }
   }
 
@@ -49,7 +47,7 @@ export class CommandBuses {
       this.findings.tooSoon(this.rule[kind], this.held, slot, this.held.since[slot]);
     }
     if (this.wholeClocks[kind] === 1 && halfCk % 2 !== 0) {
-      this.findings.wrong(CLOCK_EDGE, null, 0, 'commands on this bus begin on whole clocks');
+      this.findings.wrong(CLOCK_EDGE, null, 0, 'column commands begin on whole clocks');
     }
   }
 
@@ -61,6 +59,7 @@ export class CommandBuses {
 }
 
 const DATA_BUS = ruleNumber('data bus');
+const SHORTEST_RING = 64; // bursts; more than needed, for logs whose column commands come in heaps
 
 /**
  * Data buses: one burst at a time per pseudo-channel. A write's data may come before that of an earlier read, so the last bursts
@@ -78,7 +77,7 @@ export class DataBuses {
     private readonly findings: Findings,
   ) {
     this.reach = Math.max(limits.readData, limits.writeData) + limits.burst;
-    this.ring = 2 ** Math.ceil(Math.log2(this.reach / 2 + 2));
+    this.ring = Math.max(SHORTEST_RING, 2 ** Math.ceil(Math.log2(this.reach / 2 + 2)));
     this.bursts = new Events(this.ring * shape.pseudoChannels);
     this.next = new Int32Array(shape.pseudoChannels);
   }

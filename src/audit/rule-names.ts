@@ -32,7 +32,7 @@ export const RULES = {
   'column bus': 'one column command at a time, per channel',
   'command bus': 'one command at a time, per channel',
   'data bus': 'one burst at a time, per pseudo-channel',
-  'clock edge': 'command on a half clock where the bus has whole clocks',
+  'clock edge': 'column command on a half clock',
   'time order': 'commands of a channel in order of time',
   'address range': 'stack, channel, bank, row and column within the device',
 } as const;

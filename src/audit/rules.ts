@@ -7,8 +7,6 @@ import {
   KIND_COUNT,
   KIND_OF,
   MANY_BANKS,
-  NEEDS_COLUMN,
-  NEEDS_ROW,
   OWN,
   OWN_PRECHARGE,
   PRE,
@@ -19,6 +17,7 @@ import {
 } from './commands.js';
 import { Findings } from './findings.js';
 import { LastCommands } from './last-commands.js';
+import { logged, outOfRange } from './place.js';
 import { RefreshPace } from './refresh.js';
 import { type AuditReport, makeReport } from './report.js';
 import { ruleNumber } from './rule-names.js';
@@ -113,56 +112,45 @@ class Checker implements Audit {
     this.counts[command]++;
     const { shape, findings } = this;
     const o = shape.organisation;
+    const misplaced = outOfRange(
+      this.shape.organisation,
+      this.refreshPerSid,
+      stack,
+      channel,
+      pc,
+      sid,
+      bankGroup,
+      bank,
+      row,
+      column,
+      command,
+    );
+    const inRange = misplaced === '';
+    const kind = KIND_OF[command];
     const many = MANY_BANKS[command] === 1;
-    const misplaced = this.outOfRange(stack, channel, pc, sid, bankGroup, bank, row, column, command);
+    const wholePc = many && (sid < 0 || (kind === REFAB && !this.refreshPerSid));
     const c = stack * o.channels + channel; // channel of the package
-    if (misplaced !== '') {
+    const p = c * o.pseudo_channels + pc;
+    // the banks of p the command goes to, `first` up to `end`: one, those of a stack ID, or all
+    const oneBank = (sid * o.bank_groups + bankGroup) * o.banks_per_group + bank;
+    const first = many ? (wholePc ? 0 : sid * shape.banksPerSid) : oneBank;
+    const end = many ? (wholePc ? shape.banks : first + shape.banksPerSid) : first + 1;
+    if (!inRange) {
       findings.wrong(ADDRESS_RANGE, null, 0, misplaced);
+    } else if (halfCk < this.channelTime[c]) {
+      // what came before it is not known any more, so nothing else is asked of it; what comes after it may still rely on it
+      findings.wrong(TIME_ORDER, null, 0, `the command before it in this channel is at ck ${this.channelTime[c] / 2}`);
     } else {
-      const p = c * o.pseudo_channels + pc;
-      const kind = KIND_OF[command];
-      // the banks of p the command goes to: one, those of a stack ID, or all
-      const wholePc = many && (sid < 0 || (kind === REFAB && !this.refreshPerSid));
-      const first = many
-        ? wholePc
-          ? 0
-          : sid * shape.banksPerSid
-        : (sid * o.bank_groups + bankGroup) * o.banks_per_group + bank;
-      const end = many ? (wholePc ? shape.banks : first + shape.banksPerSid) : first + 1;
-      const what = shape.what(command, pc, wholePc ? -1 : sid, many ? -1 : first);
-      if (halfCk < this.channelTime[c]) {
-        // what came before it is not known any more, so nothing else is asked of it; what comes after it may still rely on it
-        findings.wrong(
-          TIME_ORDER,
-          null,
-          0,
-          `the command before it in this channel is at ck ${this.channelTime[c] / 2}`,
-        );
-      } else {
-        this.check(c, p, kind, command, first, end, row, halfCk);
-      }
-      this.apply(c, p, kind, command, first, end, row, halfCk, line, what);
+      this.check(c, p, kind, command, first, end, row, halfCk);
     }
     if (findings.pending > 0) {
-      const value = (field: number): number | null => (field < 0 ? null : field);
-      findings.flush(
-        {
-          ck: halfCk / 2,
-          stack,
-          channel,
-          pseudo_channel: pc,
-          sid: value(sid),
-          bank_group: value(bankGroup),
-          bank: value(bank),
-          row: value(row),
-          column: value(column),
-          command: COMMANDS[command],
-          line,
-        },
-        halfCk,
-        c,
-      );
+      // before the command takes the place of those it is held against
+      const place = { stack, channel, pseudo_channel: pc, sid, bank_group: bankGroup, bank, row, column };
+      findings.flush(logged(halfCk, place, command, line), halfCk, c);
     }
+    if (!inRange) return;
+    const what = shape.what(command, pc, wholePc ? -1 : sid, many ? -1 : first);
+    this.apply(c, p, kind, command, first, end, row, halfCk, line, what);
   }
 
   finish(endHalfCk?: number): AuditReport {
@@ -267,34 +255,4 @@ class Checker implements Audit {
     this.lasts.byBank.put(slot + OWN, begin, halfCk, line, what);
     this.openRow[bank] = CLOSED;
   }
-
-  /** What is out of the device's range, in words; '' when nothing is. */
-  private outOfRange(
-    stack: number,
-    channel: number,
-    pc: number,
-    sid: number,
-    bankGroup: number,
-    bank: number,
-    row: number,
-    column: number,
-    command: number,
-  ): string {
-    const o = this.shape.organisation;
-    const one = MANY_BANKS[command] === 0;
-    const needsSid = one || (KIND_OF[command] === REFAB && this.refreshPerSid);
-    if (!(stack >= 0 && stack < o.stacks)) return beyond('stack', stack, o.stacks);
-    if (!(channel >= 0 && channel < o.channels)) return beyond('channel', channel, o.channels);
-    if (!(pc >= 0 && pc < o.pseudo_channels)) return beyond('pseudo_channel', pc, o.pseudo_channels);
-    if (!(sid >= (needsSid ? 0 : -1) && sid < o.sids)) return beyond('sid', sid, o.sids);
-    if (one && !(bankGroup >= 0 && bankGroup < o.bank_groups)) return beyond('bank_group', bankGroup, o.bank_groups);
-    if (one && !(bank >= 0 && bank < o.banks_per_group)) return beyond('bank', bank, o.banks_per_group);
-    if (!(row >= (NEEDS_ROW[command] === 1 ? 0 : -1) && row < o.rows)) return beyond('row', row, o.rows);
-    if (!(column >= (NEEDS_COLUMN[command] === 1 ? 0 : -1) && column < o.columns))
-      return beyond('column', column, o.columns);
-    return '';
-  }
 }
-
-const beyond = (field: string, found: number, count: number): string =>
-  found < 0 ? `no ${field}` : `${field} ${found}, the device has 0 to ${count - 1}`;
