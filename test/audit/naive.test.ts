@@ -49,19 +49,25 @@ interface Step {
   readonly whole: boolean; // PREA of the whole pseudo-channel
 }
 
-const steps: fc.Arbitrary<Step[]> = fc.array(
-  fc.record({
-    gap: fc.oneof(fc.nat({ max: 4 }), fc.nat({ max: 12 }), fc.nat({ max: 120 })),
-    name: names,
-    channel: fc.oneof({ weight: 5, arbitrary: fc.constant(0) }, { weight: 1, arbitrary: bit }),
-    pc: fc.oneof({ weight: 5, arbitrary: fc.constant(0) }, { weight: 1, arbitrary: bit }),
-    sid: bit,
-    group: bit,
-    bank: bit,
-    row: fc.oneof({ weight: 6, arbitrary: fc.constant(1) }, { weight: 1, arbitrary: fc.constant(2) }),
-    whole: fc.boolean(),
-  }),
-  { maxLength: 30, size: 'max' },
+const logs = (name: fc.Arbitrary<CommandName>): fc.Arbitrary<Step[]> =>
+  fc.array(
+    fc.record({
+      gap: fc.oneof(fc.nat({ max: 4 }), fc.nat({ max: 12 }), fc.nat({ max: 120 })),
+      name,
+      channel: fc.oneof({ weight: 5, arbitrary: fc.constant(0) }, { weight: 1, arbitrary: bit }),
+      pc: fc.oneof({ weight: 5, arbitrary: fc.constant(0) }, { weight: 1, arbitrary: bit }),
+      sid: bit,
+      group: bit,
+      bank: bit,
+      row: fc.oneof({ weight: 6, arbitrary: fc.constant(1) }, { weight: 1, arbitrary: fc.constant(2) }),
+      whole: fc.boolean(),
+    }),
+    { maxLength: 30, size: 'max' },
+  );
+
+const steps = fc.oneof(
+  { weight: 3, arbitrary: logs(names) },
+  { weight: 1, arbitrary: logs(fc.constantFrom<CommandName>('REFpb', 'REFpb', 'REFpb', 'REFab', 'ACT')) },
 );
 
 function toLog(list: readonly Step[]): Command[] {
@@ -107,7 +113,7 @@ test('the fast checker and the naive one find the same, whatever the log and the
         expect(report.violations).toBe(naive.length + ends);
       }
     }),
-    { numRuns: 4000 },
+    { numRuns: 4000, seed: 1 },
   );
   // the logs were such that every rule was broken somewhere; two are of the log, not of the device
   expect(RULE_NAMES.filter((rule) => !seen.has(rule))).toEqual(['time order', 'address range']);
