@@ -34,10 +34,10 @@ export function chargeBurst(p: number, kind: number, ck: number): void {
 
 /**
  * Charges the `gap` half clocks before a column command at `t` (its data follows a data bus idle that long). Times are half
- * clocks. Limits, earliest first: the queue was empty until `since` (charged to `cause`, less refresh done meanwhile: `refreshed`
- * half clocks in all, the last until `refreshEnd`), the bank was refreshing until `bankRefreshEnd`, the row cycle alone would have
- * let the column go at `rowReady`, the activate window at `windowReady`, the row bus at `bankReady`, the column separation at
- * `groupReady` (a turnaround when `turned`); what is left is the wait for the column command bus.
+ * clocks. Limits, earliest first: the queue was empty until `since` (charged to `cause`, whatever was refreshed meanwhile: that cost
+ * nobody anything), the bank was refreshing until `bankRefreshEnd`, the row cycle alone would have let the column go at `rowReady`,
+ * the activate window at `windowReady`, the row bus at `bankReady`, the column separation at `groupReady` (a turnaround when
+ * `turned`); what is left is the wait for the column command bus.
  */
 export function chargeGap(
   p: number,
@@ -45,8 +45,6 @@ export function chargeGap(
   gap: number,
   since: number,
   cause: number,
-  refreshed: number,
-  refreshEnd: number,
   bankRefreshEnd: number,
   rowReady: number,
   windowReady: number,
@@ -60,13 +58,7 @@ export function chargeGap(
   let left = total;
   if (since > t - 2 * left) {
     const rest = since >= t ? 0 : (t - since) >> 1;
-    const starved = left - rest;
-    // refreshes since the last burst that lie before `since`
-    let during = (refreshed - (refreshEnd > since ? refreshEnd - since : 0)) >> 1;
-    if (during < 0) during = 0;
-    if (during > starved) during = starved;
-    stack[at + REFRESH] += during;
-    stack[at + cause] += starved - during;
+    stack[at + cause] += left - rest;
     left = rest;
   }
   left = cut(at + REFRESH, t, left, bankRefreshEnd);
@@ -85,12 +77,15 @@ function cut(index: number, t: number, left: number, ready: number): number {
   return rest;
 }
 
-/** Charges the idle tail of `ck` clocks, `refreshed` of them in refresh; `before` of the rest while others still got work. */
-export function chargeTail(p: number, ck: number, refreshed: number, before: number): void {
+/** Charges the idle tail of `ck` clocks: the first `before` of them while others still got work. */
+export function chargeTail(p: number, ck: number, before: number): void {
   const at = p * CLASSES;
-  const during = Math.min(ck, refreshed);
-  stack[at + REFRESH] += during;
-  const imbalance = Math.max(0, Math.min(ck - during, before));
+  const imbalance = Math.min(ck, before);
   stack[at + IMBALANCE] += imbalance;
-  stack[at + DRAIN] += ck - during - imbalance;
+  stack[at + DRAIN] += ck - imbalance;
+}
+
+/** Charges `ck` clocks in which nothing was queued to the class of what ended them. */
+export function chargeIdle(p: number, cause: number, ck: number): void {
+  stack[p * CLASSES + cause] += ck;
 }

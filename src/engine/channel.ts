@@ -1,7 +1,7 @@
 import type { MemoryGroup } from '../config/package.js';
 import type { Separations } from '../model/separations.js';
 import type { System } from '../model/system.js';
-import { chargeBurst, chargeGap, chargeTail, resetAttribution } from './attribution.js';
+import { chargeBurst, chargeGap, chargeIdle, chargeTail, resetAttribution } from './attribution.js';
 import { creditFreed } from './credits.js';
 import { ACKNOWLEDGEMENT, answerReady, DATA, FORWARDED } from './egress.js';
 import { COMMANDS, type CommandSink } from './recording.js';
@@ -44,8 +44,7 @@ const DATA_END = 32; // end of the last burst
 const SINCE = 33; // when the queues last became non-empty
 const CAUSE = 34; // class of the request that ended the last emptiness
 const LAST_KIND = 35; // of the last column command
-const REF_SUM = 36; // refresh time since the last burst, half clocks
-const REF_END = 37; // end of the last refresh of the whole pseudo-channel
+const REF_END = 37; // per-bank refresh: tRREFD since the last one has passed
 const TICK = 38; // next time the refresh bookkeeping wants a look
 const REF_TIME = 39; // next refresh command (or the precharge before it)
 const REF_UNIT = 40;
@@ -62,7 +61,6 @@ const OWED = 68; // + unit: refreshes due and not done; negative when done ahead
 const WANTED = 72; // + unit: 1 while the unit is being closed for a refresh
 const LAST_REF = 76; // + unit: time of the last refresh
 const DONE = 80; // + unit: per-bank refresh, banks of the set already refreshed, a bit each
-const WANTED_AT = 84;
 const RECENT = 88; // + sid * 4: the last four ACT times
 const RECENT_AT = 104; // + sid: index of the oldest of them
 const COL_READY = 112; // + op * 32 + group: earliest column command by column separations from those of the same kind
@@ -142,6 +140,7 @@ const entries = new Int32Array(2 * MAX_PSEUDO); // admitted and not freed
 const deepest = new Int32Array(2 * MAX_PSEUDO);
 const slotNumber = new Float64Array(MAX_PSEUDO * 256); // per slot index: the request's number, for the log
 
+const idleCarry = new Float64Array(MAX_PSEUDO); // half clocks of idle data bus that no longer fit between DATA_END and now
 let active = 0; // channels in activeList
 const ORIGIN = new Float64Array(2); // absolute half clocks: [EPOCH] added to every relative time, [WRITE_END] end of the last write burst
 const EPOCH = 0;
@@ -292,6 +291,7 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
     counter.fill(0);
   for (const counter of [precharges, refreshesAll, refreshesBank, rowHits, rowMisses, rowConflicts, forwarded])
     counter.fill(0);
+  idleCarry.fill(0);
   for (const counter of [occupancy, residence, entries, deepest]) counter.fill(0);
   resetAttribution(system.total);
   for (let p = 0; p < system.total; p++) layOut(p, system.total, controller.readQueue);
@@ -760,6 +760,10 @@ function issueColumn(pr: number, channel: number, t: number): void {
   const start = t + (kind === 0 ? K[READ_LATENCY] : K[WRITE_LATENCY]);
   if (K[ATTRIBUTION] === 1) {
     const gap = start - M[pr + DATA_END];
+    if (idleCarry[p] > 0) {
+      chargeIdle(p, M[pr + CAUSE], idleCarry[p] / 2);
+      idleCarry[p] = 0;
+    }
     if (gap > 0) {
       const rcd = kind === 0 ? K[RCD_READ] : K[RCD_WRITE];
       chargeGap(
@@ -768,8 +772,6 @@ function issueColumn(pr: number, channel: number, t: number): void {
         gap,
         M[pr + SINCE],
         M[pr + CAUSE],
-        M[pr + REF_SUM],
-        M[pr + REF_END],
         M[br + BANK_REF_END],
         M[br + ACT_WANTED] + rcd,
         M[br + ACT_WINDOW] + rcd,
@@ -778,7 +780,6 @@ function issueColumn(pr: number, channel: number, t: number): void {
         M[pr + LAST_KIND] !== kind,
       );
     }
-    M[pr + REF_SUM] = 0;
     chargeBurst(p, kind, K[BURST] >> 1);
   }
   M[pr + DATA_END] = start + K[BURST];
@@ -866,7 +867,7 @@ function activate(pr: number, p: number, br: number, channel: number, t: number,
   rowBus[channel] = t + K[ACT_HOLD];
   if (K[ONE_BUS] === 1) columnBus[channel] = t + K[ACT_HOLD];
   const group = M[br + GROUP];
-  const wanted = M[br + ACT_READY];
+  const wanted = Math.max(M[br + ACT_READY], M[slot + ARRIVED]);
   const window = M[pr + ACT_READY_G + group];
   M[br + ACT_WANTED] = wanted;
   M[br + ACT_WINDOW] = window > wanted ? window : wanted;
@@ -1094,7 +1095,6 @@ function refreshTick(pr: number, t: number): void {
 
 function wantAll(pr: number, unit: number, t: number): void {
   M[pr + WANTED + unit] = 1;
-  M[pr + WANTED_AT] = t;
   const p = pseudoOf(pr);
   const count = K[BANKS] / K[REF_UNITS];
   for (let b = unit * count; b < (unit + 1) * count; b++) {
@@ -1121,7 +1121,6 @@ function wantBank(pr: number, unit: number, t: number, must: boolean): void {
   }
   if (chosen === 0 || M[pr + REF_BANK] !== 0) return;
   M[pr + WANTED + unit] = 1;
-  M[pr + WANTED_AT] = t;
   M[pr + REF_BANK] = chosen;
   M[chosen + BLOCKED] = 1;
   if (M[chosen + KIND] !== 0) classify(pr, chosen, t);
@@ -1209,10 +1208,6 @@ function refreshAll(pr: number, p: number, unit: number, channel: number, t: num
     M[br + BANK_REF_END] = end;
     M[br + BLOCKED] = 0;
     classify(pr, br, t);
-  }
-  if (K[REF_UNITS] === 1) {
-    M[pr + REF_SUM] += end - M[pr + WANTED_AT];
-    M[pr + REF_END] = end;
   }
   refreshTick(pr, t);
 }
@@ -1403,8 +1398,8 @@ export function keepInRange(half: number): void {
     for (let channel = 0; channel < K[CHANNELS]; channel++) runChannel(channel, shift, true);
     for (let channel = 0; channel < K[CHANNELS]; channel++) {
       channelNow[channel] -= shift;
-      columnBus[channel] -= shift;
-      rowBus[channel] -= shift;
+      columnBus[channel] = Math.max(columnBus[channel] - shift, UNSET + 1);
+      rowBus[channel] = Math.max(rowBus[channel] - shift, UNSET + 1);
       for (let p = channel * K[PCS]; p < (channel + 1) * K[PCS]; p++) shiftTimes(p, shift);
     }
     ORIGIN[EPOCH] += shift;
@@ -1413,6 +1408,8 @@ export function keepInRange(half: number): void {
 
 function shiftTimes(p: number, shift: number): void {
   const pr = PR_WORDS * (p + 1);
+  const lost = UNSET + 1 - (M[pr + DATA_END] - shift);
+  if (lost > 0) idleCarry[p] += lost;
   const later = (at: number): void => {
     if (M[at] !== UNSET && M[at] !== FAR) M[at] = Math.max(M[at] - shift, UNSET + 1);
   };
@@ -1430,7 +1427,6 @@ function shiftTimes(p: number, shift: number): void {
     REF_TIME,
     LAST_COLUMN,
     OCC_AT,
-    WANTED_AT,
   ]) {
     later(pr + field);
   }
@@ -1478,11 +1474,9 @@ export function closeAccounts(end: number, lastWork: number): void {
     const t = end - ORIGIN[EPOCH];
     integrate(pr, p, t);
     if (K[ATTRIBUTION] === 0) continue;
-    const tail = (t - M[pr + DATA_END]) >> 1;
-    if (tail <= 0) continue;
-    const refreshed = M[pr + REF_SUM] - Math.max(0, M[pr + REF_END] - t);
-    const work = lastWork - ORIGIN[EPOCH] - M[pr + DATA_END];
-    chargeTail(p, tail, K[REFRESH_MODE] === 1 ? Math.max(0, refreshed) >> 1 : 0, Math.max(0, work) >> 1);
+    const dataEnd = M[pr + DATA_END] + ORIGIN[EPOCH] - idleCarry[p];
+    const tail = Math.floor((end - dataEnd) / 2);
+    if (tail > 0) chargeTail(p, tail, Math.max(0, Math.floor((lastWork - dataEnd) / 2)));
   }
 }
 

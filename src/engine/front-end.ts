@@ -156,7 +156,14 @@ export class FrontEnd {
           die = d;
         }
       }
-      if (die < 0) return true;
+      if (die < 0) {
+        // what is found out later (a credit, an answer) is acted on later: no edge before `until` comes back
+        for (let d = 0; d < this.due.length; d++) {
+          const edge = edgeAtOrAfter(d, until);
+          if (edge > this.dueCountsFrom[d]) this.dueCountsFrom[d] = edge;
+        }
+        return true;
+      }
       if (!this.work.enough()) return false;
       this.edge(die, this.due[die], now);
       // another die's engine may have been woken by rows dealt to it

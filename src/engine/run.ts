@@ -94,6 +94,11 @@ export async function runEngine(
     options.replay === 'open',
   );
 
+  // rows may be long in coming (a pipe): an interrupt does not wait for them
+  const { signal } = options;
+  const aborted = new Promise<void>((resolve) => signal?.addEventListener('abort', () => resolve(), { once: true }));
+  const more = (): Promise<void> => Promise.race([work.refill(), aborted]);
+
   let frontPs = 0; // the front end has handled every edge before this
   let backHalf = 0; // the channels have run up to this half clock
   let windows = 0;
@@ -105,8 +110,9 @@ export async function runEngine(
       const next = front.nextPs();
       if (next === Number.POSITIVE_INFINITY) {
         if (!work.enough()) {
-          await work.refill();
-          continue;
+          await more();
+          if (!signal?.aborted) continue;
+          partial = true;
         }
         break;
       }
@@ -125,7 +131,7 @@ export async function runEngine(
     }
 
     // the front end, then the channels, then what they answered goes on the up links
-    while (!front.advance(frontPs)) await work.refill();
+    while (!front.advance(frontPs) && !signal?.aborted) await more();
     const reachHalf = Math.floor((frontPs + downPs) / halfPs);
     backHalf = Math.min(Math.max(backHalf, Math.min(reachHalf, backHalf + windowHalf)), Math.ceil(untilPs / halfPs));
     keepInRange(backHalf);
@@ -135,10 +141,10 @@ export async function runEngine(
     for (let stack = 0; stack < system.stacks; stack++) drainEgress(stack, drainTo, front.answer);
     frontPs = Math.max(frontPs, Math.floor(2 * drainTo * halfPs + upPs));
 
-    if (++windows % WINDOWS_PER_BREATH === 0) {
+    if (++windows % WINDOWS_PER_BREATH === 0 || signal?.aborted) {
       options.onProgress?.({ simulatedPs: frontPs, requests: front.answered, bytes: front.bytesAnswered });
-      if (windows % (16 * WINDOWS_PER_BREATH) === 0) await new Promise(setImmediate);
-      if (options.signal?.aborted) untilPs = frontPs; // the next turn is the last
+      await new Promise(setImmediate); // signals arrive here
+      if (signal?.aborted) untilPs = frontPs; // the next turn is the last
     }
   }
   if (!partial && (front.inFlight > 0 || !work.finished())) {

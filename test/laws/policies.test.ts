@@ -178,7 +178,7 @@ describe('write drain', () => {
 
 describe('refresh', () => {
   // fails: see asleep.test.ts
-  it.fails('costs a saturated stream a little more than tRFC / tREFI, and postponing none of it in the long run', async () => {
+  it('costs a saturated stream a little more than tRFC / tREFI, and postponing none of it in the long run', async () => {
     const rows = Array.from({ length: 30_000 }, (_, i): Row => ({ op: 'R', address: 256 * i, bytes: 256 }));
     const off = await run(lonePackage(), rows);
     for (const postpone of [0, 4]) {

@@ -34,12 +34,8 @@ function unused(log: readonly LoggedCommand[], from: number, to: number): number
   return 100 * (1 - (2 * reads) / (to - from));
 }
 
-// A long link and a deep queue, so that answers and credits are under way all through a refresh: a die that sleeps longer than
-// its credit ring is the matter of test/laws/asleep.test.ts, not of this file.
-const AWAKE = ['links.0.latency=300 ns', 'memory.0.controller={ read_queue: 512 }'];
-
 const allBank = (tRFC: number, ...more: string[]): Package =>
-  lone('hbm3-6.4', `memory.0.timings={ tRFCab: ${tRFC} ns }`, 'memory.0.refresh={ mode: all-bank }', ...AWAKE, ...more);
+  lone('hbm3-6.4', `memory.0.timings={ tRFCab: ${tRFC} ns }`, 'memory.0.refresh={ mode: all-bank }', ...more);
 
 /*
  * Tolerance, chosen beforehand: 0.3 points of the bus at tREFI, twice that when hot: a refresh finds the stream at any point of
@@ -53,7 +49,7 @@ describe.each(DENSITIES)('all-bank refresh of $gigabit Gb a channel', ({ tRFC, l
     { at: '95 C', times: 2 },
   ])('at $at takes a little more than tRFC / tREFI of a saturating stream', async ({ at, times }) => {
     expect(Math.abs((100 * tRFC) / TREFI - loss)).toBeLessThan(0.01); // the table's own arithmetic
-    const without = await stream(lone('hbm3-6.4', ...AWAKE), 2 ** 20);
+    const without = await stream(lone('hbm3-6.4'), 2 ** 20);
     const reads = only(without, 'RD');
     const floor = unused(without, reads[0].ck, reads[reads.length - 1].ck);
     expect(floor).toBeLessThan(0.5); // nothing but refresh is in the way
@@ -100,7 +96,7 @@ describe('how often', () => {
   });
 
   it('per-bank: every bank its share, in sets, none waits longer than nine tREFI', async () => {
-    const pkg = lone('hbm3-6.4', 'memory.0.refresh={ mode: per-bank }', ...AWAKE);
+    const pkg = lone('hbm3-6.4', 'memory.0.refresh={ mode: per-bank }');
     const rows = Array.from({ length: 3000 }, (_, i): Row => ({ op: 'R', address: 4096 * i, bytes: 4096 }));
     const { commands, recording } = await simulate(pkg, accessTrace(rows), { log: true });
     const refreshes = only(commands, 'REFpb');
