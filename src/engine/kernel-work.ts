@@ -266,12 +266,11 @@ export class KernelWork implements Work {
       const context = engine * this.streams + stream;
       while (this.computable(context, engine)) {
         const index = this.queue[stream][0];
-        const { kernel, shares } = this.placed[index];
+        const { kernel } = this.placed[index];
         const die = this.engineDie[engine];
-        const flops = kernel.flops === 0 ? 0 : shares[die].flops / shares[die].tiles;
+        const flops = this.tileFlops(index, die);
         const record = this.kernels[index];
         if (record.startPs < 0) record.startPs = now;
-        record.flops += flops;
         const rate = flops === 0 ? 1 : (this.flopsPerPs.get(kernel.format) as Float64Array)[die];
         const ps = Math.ceil(flops / rate);
         if (ps > 0) {
@@ -286,6 +285,12 @@ export class KernelWork implements Work {
     }
   }
 
+  /** Work of one tile of a kernel on a die. */
+  private tileFlops(index: number, die: number): number {
+    const { kernel, shares } = this.placed[index];
+    return kernel.flops === 0 ? 0 : shares[die].flops / shares[die].tiles;
+  }
+
   private computable(context: number, engine: number): boolean {
     const tile = this.computing[context];
     return (
@@ -298,12 +303,14 @@ export class KernelWork implements Work {
 
   private tileComputed(context: number, now: number, why: number): void {
     const engine = Math.floor(context / this.streams);
+    const index = this.queue[context % this.streams][0];
+    this.kernels[index].flops += this.tileFlops(index, this.engineDie[engine]);
     const gateWasShut = this.loading[context] >= this.computing[context] + this.buffering[engine];
     if (gateWasShut) this.hold(context * 2, now, why);
     if (this.storing[context] === this.computing[context]) this.hold(context * 2 + 1, now, why);
     this.computing[context]++;
     // a tile without stores is stored at once
-    if (this.placed[this.queue[context % this.streams][0]].kernel.writeBytes === 0) {
+    if (this.placed[index].kernel.writeBytes === 0) {
       this.storing[context] = this.computing[context];
     }
     this.finishContext(context, now);

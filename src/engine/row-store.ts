@@ -12,6 +12,7 @@ export class RowStore {
   readonly engine: Int32Array;
   readonly tile: Int32Array;
   readonly after: Int32Array;
+  readonly row: Float64Array; // number of the row, from 1
   readonly tag: Int32Array; // the holder's own note
   private readonly size: number;
 
@@ -28,6 +29,7 @@ export class RowStore {
     this.engine = new Int32Array(size);
     this.tile = new Int32Array(size);
     this.after = new Int32Array(size);
+    this.row = new Float64Array(size);
     this.tag = new Int32Array(size);
   }
 
@@ -48,6 +50,7 @@ export class RowStore {
     this.flops[at] = other.flops[from];
     this.tile[at] = other.tile[from];
     this.after[at] = other.after[from];
+    this.row[at] = other.row[from];
     return at;
   }
 

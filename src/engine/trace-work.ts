@@ -1,4 +1,5 @@
 import type { Package } from '../config/package.js';
+import { InputError } from '../errors.js';
 import type { AddressMap } from '../model/address-map.js';
 import { type AccessBatch, type AccessTrace, READ, WRITE } from '../trace/batch.js';
 import { type KernelRecord, type RunOptions, STACK_CLASSES } from './recording.js';
@@ -8,7 +9,7 @@ import { kernelRecord, type Runnable, type Work } from './work.js';
 
 const AHEAD = 64; // rows an engine holds before the trace waits for it
 const HISTORY = 4096; // rows back that `after` can see, and rows an engine may have outstanding
-const STORES = 1024; // stores an engine keeps back for tiles not computed yet
+const STORES = HISTORY; // stores an engine keeps back for tiles not computed yet
 const UNISSUED = 1 << 24; // added to what is outstanding while some is not issued yet
 const FOR_ARRIVALS = STACK_CLASSES.indexOf('starved_arrivals');
 const FOR_WINDOW = STACK_CLASSES.indexOf('starved_window');
@@ -49,7 +50,11 @@ export class TraceWork implements Work {
   private readonly lastTime: Float64Array; // per engine: recorded time of the row issued last
   private readonly lastIssue: Float64Array; // per engine
   private readonly outstanding: Int32Array; // per engine
-  private readonly depends: Uint8Array; // per engine: the head row waits for an earlier one
+  private readonly depends: Uint8Array; // per side: the next row waits for an earlier one
+  private readonly storeTile: Float64Array; // per engine, HISTORY: the tile a kept store waits for, by its slot
+  private readonly keptDepends: Int32Array; // per engine: kept stores that wait for an earlier row
+  private readonly keptFrom: Float64Array; // per engine: the earliest row they wait for
+  private rowsRead = 0;
   private readonly alarmSet: Uint8Array; // per engine: an arrival alarm is under way
   private remembers = false; // rows depend on earlier rows or form tiles, so their return is tracked
   // tiles, per engine; tile slots are taken in turn
@@ -106,7 +111,10 @@ export class TraceWork implements Work {
     this.lastTime = new Float64Array(engines).fill(-1);
     this.lastIssue = new Float64Array(engines);
     this.outstanding = new Int32Array(engines);
-    this.depends = new Uint8Array(engines);
+    this.depends = new Uint8Array(engines * 2);
+    this.storeTile = new Float64Array(engines * HISTORY);
+    this.keptDepends = new Int32Array(engines);
+    this.keptFrom = new Float64Array(engines).fill(Number.POSITIVE_INFINITY);
     this.alarmSet = new Uint8Array(engines);
     this.tileOpen = new Uint8Array(engines);
     this.tileNumber = new Float64Array(engines);
@@ -154,7 +162,7 @@ export class TraceWork implements Work {
 
   peek(engine: number, now: number): boolean {
     this.engine = engine;
-    if (this.tiled && this.findStore(engine)) return true;
+    if (this.tiled && this.findStore(engine, now)) return true;
     const rows = this.rows[engine];
     for (;;) {
       if (rows.count === 0) {
@@ -163,14 +171,15 @@ export class TraceWork implements Work {
       }
       const at = rows.first;
       if (this.partLeft[engine * 2] === 0) {
+        // the open tile has its last row once another's is next, however long that one has to wait
+        if (this.tiled && this.tileOpen[engine] === 1 && !this.inOpenTile(engine, at)) this.closeTile(engine, now);
         if (
           !this.arrived(engine, now) ||
           (this.remembers && !this.depended(engine, at, now)) ||
-          (this.tiled && !this.inTile(engine, at, now))
+          (this.tiled && !this.inTile(engine, at))
         )
           return false;
         if (this.tiled && rows.op[at] === WRITE) {
-          if (this.stores[engine].count === STORES) return false;
           this.keepStore(engine, at, now);
           continue;
         }
@@ -229,6 +238,7 @@ export class TraceWork implements Work {
       const spent = now - this.computeFrom[engine];
       const slot = engine * this.slots + (this.computing[engine] % this.slots);
       const record = this.kernels[this.tileKernel[slot]];
+      record.flops += this.tileFlops[slot];
       this.computePs[engine] += spent;
       record.computePs += spent;
       record.endPs = Math.max(record.endPs, now);
@@ -255,6 +265,7 @@ export class TraceWork implements Work {
       this.store.tile[at] = batch.tile === null ? -1 : batch.tile[i];
       this.store.flops[at] = batch.flops === null ? 0 : batch.flops[i];
       this.store.after[at] = batch.after === null ? 0 : batch.after[i];
+      this.store.row[at] = ++this.rowsRead;
     }
     while (this.kernels.length < this.trace.kernelNames.length) {
       this.kernels.push(kernelRecord(this.trace.kernelNames[this.kernels.length]));
@@ -306,23 +317,58 @@ export class TraceWork implements Work {
     return false;
   }
 
-  /** Whether the row that the head row depends on has returned, and the history has room. */
+  /** Whether the history has room for the head row and the row it depends on has returned; a store asks that when it is sent. */
   private depended(engine: number, at: number, now: number): boolean {
+    const rows = this.rows[engine];
     const row = this.rowCount[engine];
-    if (this.rowLeft[engine * HISTORY + (row % HISTORY)] !== 0) return false;
-    const back = this.rows[engine].after[at];
-    if (back === 0 || back > row) return true;
-    const returned = this.rowLeft[engine * HISTORY + ((row - back) % HISTORY)] === 0;
-    if (returned && this.depends[engine] === 1) this.hold(engine * 2, now, FOR_WINDOW);
-    this.depends[engine] = returned ? 0 : 1;
+    const before = engine * HISTORY + (row % HISTORY);
+    if (this.rowLeft[before] !== 0) {
+      if (this.awaitsOpenTile(engine, before)) this.refuse(rows.row[at], 'a tile of more than 4,096 rows that stores');
+      return false;
+    }
+    if (row - this.keptFrom[engine] >= HISTORY) return false; // the slot of a row that a store still asks for
+    const back = rows.after[at];
+    if (back === 0 || back > row || (this.tiled && rows.op[at] === WRITE)) return true;
+    const other = engine * HISTORY + ((row - back) % HISTORY);
+    if (this.rowLeft[other] !== 0 && this.inOpenTile(engine, at) && this.awaitsOpenTile(engine, other))
+      this.refuse(
+        rows.row[at],
+        'a load that depends on a store of its own tile, which is sent when the tile has computed',
+      );
+    return this.returnedFor(engine * 2, other, now);
+  }
+
+  /** Whether the row in history slot `tag` has returned; notes how long a `side` that asked before had to wait. */
+  private returnedFor(side: number, tag: number, now: number): boolean {
+    const returned = this.rowLeft[tag] === 0;
+    if (returned && this.depends[side] === 1) this.hold(side, now, FOR_WINDOW);
+    this.depends[side] = returned ? 0 : 1;
     return returned;
   }
 
-  /** Opens, continues or closes tiles so that the head row is in the open one; false when it must wait for its tile. */
-  private inTile(engine: number, at: number, now: number): boolean {
+  private inOpenTile(engine: number, at: number): boolean {
+    const tile = this.rows[engine].tile[at];
+    return this.tileOpen[engine] === 1 && tile >= 0 && tile === this.tileNumber[engine];
+  }
+
+  /** Whether the row in history slot `tag` is a store kept for the tile that is being loaded. */
+  private awaitsOpenTile(engine: number, tag: number): boolean {
+    if (!this.tiled || this.tileOpen[engine] === 0) return false;
+    return this.rowLeft[tag] === UNISSUED && this.storeTile[tag] === this.loading[engine];
+  }
+
+  private refuse(row: number, found: string): never {
+    throw new InputError({
+      where: { file: this.trace.file, path: `row ${row}` },
+      found,
+      expected: 'rows that can be played in order, tile by tile: loads, compute, stores',
+      hint: 'rows are counted from 1, without header and comments; give the row another tile number',
+    });
+  }
+
+  /** Opens the head row's tile if need be; false when it must wait for a free buffer. */
+  private inTile(engine: number, at: number): boolean {
     const rows = this.rows[engine];
-    const same = rows.tile[at] >= 0 && rows.tile[at] === this.tileNumber[engine];
-    if (this.tileOpen[engine] === 1 && !same) this.closeTile(engine, now);
     if (this.tileOpen[engine] === 0) {
       if (this.loading[engine] - this.computing[engine] >= this.depth[engine]) return false;
       this.tileOpen[engine] = 1;
@@ -364,9 +410,20 @@ export class TraceWork implements Work {
   private keepStore(engine: number, at: number, now: number): void {
     const rows = this.rows[engine];
     const slot = this.beginRow(engine, at, now);
-    const kept = this.stores[engine].copyFrom(rows, at);
-    this.stores[engine].tag[kept] = slot;
-    this.stores[engine].time[kept] = this.loading[engine]; // from here on: the tile it belongs to
+    const stores = this.stores[engine];
+    const kept = stores.copyFrom(rows, at);
+    const row = this.rowCount[engine];
+    stores.tag[kept] = slot;
+    stores.time[kept] = this.loading[engine]; // from here on: the tile it belongs to
+    this.storeTile[engine * HISTORY + slot] = this.loading[engine];
+    // from here on: history slot + 1 of the row it waits for
+    const back = stores.after[kept] > row ? 0 : stores.after[kept];
+    const other = (row - back) % HISTORY;
+    stores.after[kept] = back === 0 || this.rowLeft[engine * HISTORY + other] === 0 ? 0 : other + 1;
+    if (stores.after[kept] !== 0) {
+      this.keptDepends[engine]++;
+      this.keptFrom[engine] = Math.min(this.keptFrom[engine], row - back);
+    }
     this.lastTime[engine] = rows.time[at];
     this.lastIssue[engine] = now;
     rows.drop();
@@ -374,10 +431,16 @@ export class TraceWork implements Work {
     this.deal();
   }
 
-  private findStore(engine: number): boolean {
+  private findStore(engine: number, now: number): boolean {
     const stores = this.stores[engine];
-    if (stores.count === 0 || stores.time[stores.first] >= this.computing[engine]) return false;
-    this.offer(engine, stores, stores.first, engine * 2 + 1);
+    const at = stores.first;
+    if (stores.count === 0 || stores.time[at] >= this.computing[engine]) return false;
+    if (stores.after[at] !== 0) {
+      if (!this.returnedFor(engine * 2 + 1, engine * HISTORY + stores.after[at] - 1, now)) return false;
+      stores.after[at] = 0;
+      if (--this.keptDepends[engine] === 0) this.keptFrom[engine] = Number.POSITIVE_INFINITY;
+    }
+    this.offer(engine, stores, at, engine * 2 + 1);
     this.fromStores = true;
     return true;
   }
@@ -399,7 +462,6 @@ export class TraceWork implements Work {
       const slot = engine * this.slots + (this.computing[engine] % this.slots);
       if (this.tileLoads[slot] !== 0) return;
       const flops = this.tileFlops[slot];
-      this.kernels[this.tileKernel[slot]].flops += flops;
       const ps = flops === 0 ? 0 : Math.ceil(flops / this.flopsPerPs[this.engineDie[engine]]);
       if (ps > 0) {
         this.engineComputes[engine] = 1;

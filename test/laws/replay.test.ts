@@ -244,8 +244,6 @@ describe('tiles', () => {
     expect(spans[2]).toBeLessThanOrEqual(spans[1]);
   });
 
-  // fails: a store counts as begun when it is kept for its tile, so a later row of the tile that depends on it waits for ever, and
-  // the run ends in CheckError; two stores in order can be had, a load after a store of its own tile should be refused by name
   it('a store may depend on an earlier store of its tile', async () => {
     const rows: Row[] = [0, 1].map((i) => ({
       op: 'W',
@@ -258,6 +256,49 @@ describe('tiles', () => {
     }));
     const requests = await byRow(smallPackage(), rows, 'closed');
     expect(issued(requests[1][0])).toBeGreaterThanOrEqual(done(requests[0][0]));
+  });
+
+  it('chains of stores over many tiles go one after the other, whatever else is loaded meanwhile', async () => {
+    const rows: Row[] = [];
+    for (let tile = 0; tile < 60; tile++) {
+      for (let i = 0; i < 100; i++) {
+        const op = i % 10 === 9 ? 'W' : 'R';
+        // a store waits for the store before it, ten rows back
+        const after = op === 'W' && rows.length > 10 ? 10 : 0;
+        rows.push({ op, address: 32 * rows.length, bytes: 32, engine: 0, tile, flops: 1, after });
+      }
+    }
+    const requests = await byRow(smallPackage(), rows, 'closed');
+    for (let row = 19; row < rows.length; row += 10)
+      expect(issued(requests[row][0])).toBeGreaterThanOrEqual(done(requests[row - 10][0]));
+  });
+
+  it('a load that waits for a store of its own tile can never go, and is refused by its row', async () => {
+    const row = (op: 'R' | 'W', after: number, tile: number): Row => ({
+      op,
+      address: 0,
+      bytes: 32,
+      engine: 0,
+      after,
+      tile,
+    });
+    const inOneTile = byRow(smallPackage(), [row('R', 0, 0), row('W', 0, 0), row('R', 1, 0)], 'closed');
+    await expect(inOneTile).rejects.toThrow(
+      /^memory\.csv: row 3: found a load that depends on a store of its own tile/,
+    );
+    // in the next tile it may
+    const requests = await byRow(smallPackage(), [row('R', 0, 0), row('W', 0, 0), row('R', 1, 1)], 'closed');
+    expect(issued(requests[2][0])).toBeGreaterThanOrEqual(done(requests[1][0]));
+  });
+
+  it('a tile that stores and never ends is refused by the row that no longer fits', async () => {
+    const rows = Array.from(
+      { length: 5000 },
+      (_, i): Row => ({ op: i ? 'R' : 'W', address: 32 * i, bytes: 32, engine: 0, tile: 0 }),
+    );
+    await expect(byRow(smallPackage(), rows, 'closed')).rejects.toThrow(
+      'row 4097: found a tile of more than 4,096 rows that stores',
+    );
   });
 });
 
