@@ -1,7 +1,7 @@
 import type { MemoryGroup } from '../config/package.js';
 import type { Separations } from '../model/separations.js';
 import type { System } from '../model/system.js';
-import { chargeBurst, chargeGap, chargeIdle, chargeTail, resetAttribution } from './attribution.js';
+import { chargeColumn, chargeIdle, chargeTail, resetAttribution } from './attribution.js';
 import { creditFreed } from './credits.js';
 import { ACKNOWLEDGEMENT, answerReady, DATA, FORWARDED } from './egress.js';
 import { COMMANDS, type CommandSink } from './recording.js';
@@ -96,6 +96,9 @@ const BANK_LAST = 19; // last column command
 const OPEN_PREV = 20; // page timeout list
 const OPEN_NEXT = 21;
 const BANK_INDEX = 22;
+const BANK_ATOMS = 23; // column commands, counted since the last re-base; see shiftTimes
+const BANK_ACTS = 24;
+const BANK_CONFLICTS = 25;
 
 // queue slot record
 const SLOT_WORDS = 16;
@@ -140,7 +143,9 @@ const entries = new Int32Array(2 * MAX_PSEUDO); // admitted and not freed
 const deepest = new Int32Array(2 * MAX_PSEUDO);
 const slotNumber = new Float64Array(MAX_PSEUDO * 256); // per slot index: the request's number, for the log
 
+const readWaited = new Float64Array(MAX_PSEUDO); // occupancy of the read queue up to the last column command
 const idleCarry = new Float64Array(MAX_PSEUDO); // half clocks of idle data bus that no longer fit between DATA_END and now
+const bankCounts = new Float64Array(3 * MAX_PSEUDO * 64); // (p * banks + bank) * 3: atoms, ACTs, conflicts before the last re-base
 let active = 0; // channels in activeList
 const ORIGIN = new Float64Array(2); // absolute half clocks: [EPOCH] added to every relative time, [WRITE_END] end of the last write burst
 const EPOCH = 0;
@@ -291,7 +296,8 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
     counter.fill(0);
   for (const counter of [precharges, refreshesAll, refreshesBank, rowHits, rowMisses, rowConflicts, forwarded])
     counter.fill(0);
-  idleCarry.fill(0);
+  for (const counter of [idleCarry, readWaited]) counter.fill(0);
+  bankCounts.fill(0, 0, 3 * system.total * system.banks);
   for (const counter of [occupancy, residence, entries, deepest]) counter.fill(0);
   resetAttribution(system.total);
   for (let p = 0; p < system.total; p++) layOut(p, system.total, controller.readQueue);
@@ -760,27 +766,35 @@ function issueColumn(pr: number, channel: number, t: number): void {
   const start = t + (kind === 0 ? K[READ_LATENCY] : K[WRITE_LATENCY]);
   if (K[ATTRIBUTION] === 1) {
     const gap = start - M[pr + DATA_END];
+    const startCk = (start + ORIGIN[EPOCH]) / 2;
     if (idleCarry[p] > 0) {
-      chargeIdle(p, M[pr + CAUSE], idleCarry[p] / 2);
+      const carried = idleCarry[p] / 2;
+      chargeIdle(p, M[slot + KERNEL], M[pr + CAUSE], startCk - (gap >> 1) - carried, carried);
       idleCarry[p] = 0;
     }
-    if (gap > 0) {
-      const rcd = kind === 0 ? K[RCD_READ] : K[RCD_WRITE];
-      chargeGap(
-        p,
-        t,
-        gap,
-        M[pr + SINCE],
-        M[pr + CAUSE],
-        M[br + BANK_REF_END],
-        M[br + ACT_WANTED] + rcd,
-        M[br + ACT_WINDOW] + rcd,
-        M[br + BANK_COL_READY + kind],
-        M[pr + COL_READY + (kind << 5) + group],
-        M[pr + LAST_KIND] !== kind,
-      );
-    }
-    chargeBurst(p, kind, K[BURST] >> 1);
+    integrate(pr, p, t);
+    const waited = occupancy[p * 2] - readWaited[p];
+    readWaited[p] = occupancy[p * 2];
+    const rcd = kind === 0 ? K[RCD_READ] : K[RCD_WRITE];
+    chargeColumn(
+      p,
+      M[slot + KERNEL],
+      kind,
+      M[pr + LAST_KIND],
+      t,
+      startCk,
+      K[BURST] >> 1,
+      gap,
+      M[pr + SINCE],
+      M[pr + CAUSE],
+      M[br + BANK_REF_END],
+      M[br + ACT_WANTED] + rcd,
+      M[br + ACT_WINDOW] + rcd,
+      M[br + BANK_COL_READY + kind],
+      M[pr + COL_READY + (kind << 5) + group],
+      M[pr + LAST_COLUMN],
+      waited,
+    );
   }
   M[pr + DATA_END] = start + K[BURST];
   M[pr + LAST_KIND] = kind;
@@ -802,6 +816,7 @@ function issueColumn(pr: number, channel: number, t: number): void {
   const pre = t + (kind === 0 ? K[READ_TO_PRE] : K[WRITE_TO_PRE]);
   if (pre > M[br + PRE_READY]) M[br + PRE_READY] = pre;
   const hits = ++M[br + HITS];
+  M[br + BANK_ATOMS]++;
   const column = M[slot + COLUMN]++;
   const left = --M[slot + LEFT];
   M[pr + DIRTY + 1] = 1;
@@ -845,6 +860,7 @@ function issuePrecharge(pr: number, channel: number, t: number): void {
   if (M[head + FIRST] === UNSET) {
     M[head + FIRST] = t;
     rowConflicts[p]++;
+    M[br + BANK_CONFLICTS]++;
   }
   precharge(pr, p, br, channel, t);
   classify(pr, br, t);
@@ -864,6 +880,7 @@ function issueActivate(pr: number, channel: number, t: number): void {
 
 function activate(pr: number, p: number, br: number, channel: number, t: number, row: number, slot: number): void {
   activates[p]++;
+  M[br + BANK_ACTS]++;
   rowBus[channel] = t + K[ACT_HOLD];
   if (K[ONE_BUS] === 1) columnBus[channel] = t + K[ACT_HOLD];
   const group = M[br + GROUP];
@@ -1454,10 +1471,20 @@ function shiftTimes(p: number, shift: number): void {
     ]) {
       later(br + field);
     }
+    countBank(p, b);
   }
   for (let i = 0; i < K[DEPTH]; i++) {
     const slot = K[SLOT_BASE] + SLOT_WORDS * (p * K[DEPTH] + i);
     for (const field of [ARRIVED, FIRST, FIRST_COLUMN]) later(slot + field);
+  }
+}
+
+/** Moves a bank's counts to where they cannot wrap: between two re-bases there are fewer than 2^29 half clocks, and commands. */
+function countBank(p: number, b: number): void {
+  const br = bankRecord(p, b);
+  for (let i = 0; i < 3; i++) {
+    bankCounts[(p * K[BANKS] + b) * 3 + i] += M[br + BANK_ATOMS + i];
+    M[br + BANK_ATOMS + i] = 0;
   }
 }
 
@@ -1474,9 +1501,9 @@ export function closeAccounts(end: number, lastWork: number): void {
     const t = end - ORIGIN[EPOCH];
     integrate(pr, p, t);
     if (K[ATTRIBUTION] === 0) continue;
-    const dataEnd = M[pr + DATA_END] + ORIGIN[EPOCH] - idleCarry[p];
-    const tail = Math.floor((end - dataEnd) / 2);
-    if (tail > 0) chargeTail(p, tail, Math.max(0, Math.floor((lastWork - dataEnd) / 2)));
+    const dataEnd = (M[pr + DATA_END] + ORIGIN[EPOCH] - idleCarry[p]) / 2;
+    const tail = end / 2 - dataEnd;
+    if (tail > 0) chargeTail(p, dataEnd, tail, Math.max(0, Math.floor(lastWork / 2 - dataEnd)));
   }
 }
 
@@ -1495,12 +1522,18 @@ export interface ChannelCounters {
   readonly residence: Float64Array; // half clocks, p * 2 + op
   readonly deepest: Int32Array; // p * 2 + op
   readonly queued: number; // entries left in any queue
+  readonly bankAtoms: Float64Array; // p * banks + bank: column commands
+  readonly bankActivates: Float64Array;
+  readonly bankConflicts: Float64Array;
 }
 
 /** Copies of the counters of the run so far. */
 export function channelCounters(): ChannelCounters {
   const total = K[CHANNELS] * K[PCS];
   let left = 0;
+  for (let p = 0; p < total; p++) for (let b = 0; b < K[BANKS]; b++) countBank(p, b);
+  const ofBanks = (i: number): Float64Array<ArrayBuffer> =>
+    Float64Array.from({ length: total * K[BANKS] }, (_, bank) => bankCounts[bank * 3 + i]);
   for (let i = 0; i < 2 * total; i++) left += entries[i];
   return {
     reads: reads.slice(0, total),
@@ -1517,5 +1550,8 @@ export function channelCounters(): ChannelCounters {
     residence: residence.slice(0, 2 * total),
     deepest: deepest.slice(0, 2 * total),
     queued: left,
+    bankAtoms: ofBanks(0),
+    bankActivates: ofBanks(1),
+    bankConflicts: ofBanks(2),
   };
 }

@@ -1,6 +1,6 @@
 import type { Package } from '../config/package.js';
 import { memoryOf, systemOf } from '../model/system.js';
-import { bandwidthStack } from './attribution.js';
+import { attribution } from './attribution.js';
 import { channelCounters } from './channel.js';
 import type { FrontEnd } from './front-end.js';
 import { type Check, type KernelRecord, type Recording, STACK_CLASSES } from './recording.js';
@@ -22,7 +22,6 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
   const lane = (both: Float64Array, op: number): Float64Array =>
     Float64Array.from({ length: system.total }, (_, p) => both[p * 2 + op]);
   const slices = timeline();
-  const stack = bandwidthStack();
   const kernels = work.kernels.map((kernel, k): KernelRecord => {
     const moved = movedAtoms(k);
     return {
@@ -30,6 +29,12 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
       movedReadBytes: moved.read * system.atomBytes,
       movedWriteBytes: moved.write * system.atomBytes,
     };
+  });
+
+  const charged = attribution(system.total, kernels.length);
+  const readWaitCk = new Float64Array(STACK_CLASSES.length);
+  charged.readWait.forEach((half, i) => {
+    readWaitCk[i % readWaitCk.length] += half / 2;
   });
 
   const checks: Check[] = [];
@@ -73,9 +78,14 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
     const classes = STACK_CLASSES.length;
     let off = 0; // clocks by which the worst pseudo-channel's stack misses the elapsed clocks
     for (let p = 0; p < system.total; p++) {
-      off = Math.max(off, Math.abs(sum(stack.subarray(p * classes, (p + 1) * classes)) - ending.elapsedCk));
+      off = Math.max(off, Math.abs(sum(charged.stack.subarray(p * classes, (p + 1) * classes)) - ending.elapsedCk));
     }
     check('bandwidth stacks add up to the elapsed clocks (worst difference)', off, 0);
+    check('the stack over time adds up to the elapsed clocks', sum(charged.bySlice), system.total * ending.elapsedCk);
+    if (!ending.partial) {
+      const waited = sum(lane(counters.residence, 0)) / 2;
+      check('what reads waited for adds up to their time in the queues', sum(readWaitCk), waited, 1e-9 * waited);
+    }
   }
 
   return {
@@ -105,7 +115,20 @@ export function record(pkg: Package, front: FrontEnd, work: Work, ending: Ending
       readQueueMax: Int32Array.from({ length: system.total }, (_, p) => counters.deepest[p * 2]),
       writeQueueMax: Int32Array.from({ length: system.total }, (_, p) => counters.deepest[p * 2 + 1]),
     },
-    bandwidthStack: stack,
+    banks: {
+      count: system.banks,
+      atoms: counters.bankAtoms,
+      activates: counters.bankActivates,
+      conflicts: counters.bankConflicts,
+    },
+    bandwidthStack: charged.stack,
+    kernelStack: charged.byKernel,
+    stackTimeline: {
+      sliceCk: charged.sliceCk,
+      slicePs: charged.sliceCk * memory.clockPs,
+      classes: charged.bySlice,
+    },
+    readWaitCk,
     engineComputePs: work.computePs,
     engineWindowPs: front.windowPs,
     checks,

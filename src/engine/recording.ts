@@ -108,8 +108,25 @@ export interface Recording {
     readonly readQueueMax: Int32Array;
     readonly writeQueueMax: Int32Array;
   };
-  /** bandwidthStack[p * STACK_CLASSES.length + class], ck; each p sums to elapsedCk. */
+  /** Per bank of a pseudo-channel, index p * count + bank, stack IDs and bank groups in order within p. */
+  readonly banks: {
+    readonly count: number; // banks of a pseudo-channel
+    readonly atoms: Float64Array; // column commands
+    readonly activates: Float64Array;
+    readonly conflicts: Float64Array; // requests that found another row open
+  };
+  /** bandwidthStack[p * STACK_CLASSES.length + class], ck; each p sums to elapsedCk. All zeros when attribution was off. */
   readonly bandwidthStack: Float64Array;
+  /** kernelStack[kernel * STACK_CLASSES.length + class], ck of all pseudo-channels: bursts of the kernel and the gaps before them. */
+  readonly kernelStack: Float64Array;
+  /** The bandwidth stack over time: slice i covers clocks [i * sliceCk, (i + 1) * sliceCk) of all pseudo-channels. */
+  readonly stackTimeline: {
+    readonly sliceCk: number;
+    readonly slicePs: number;
+    readonly classes: Float64Array; // slice * STACK_CLASSES.length + class, ck; at most 512 slices
+  };
+  /** readWaitCk[class]: what reads in the controllers' queues waited for, from arrival to last column command, read x ck. */
+  readonly readWaitCk: Float64Array;
   /** Engines of all dies in die order: time spent computing, ps, and integral of outstanding requests, request x ps. */
   readonly engineComputePs: Float64Array;
   readonly engineWindowPs: Float64Array;

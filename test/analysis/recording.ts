@@ -94,6 +94,7 @@ export function made(): Made {
   const total = 32;
   const elapsedCk = 1600;
   const each = (value: number): Float64Array => new Float64Array(total).fill(value);
+  const perBank = (value: number): Float64Array => new Float64Array(2 * total).fill(value);
   const reads = each(4); // x 32 = 128 atoms = 4,096 B
   const writes = each(2); // 64 atoms = 2,048 B
   const stack = new Float64Array(total * STACK_CLASSES.length);
@@ -155,7 +156,11 @@ export function made(): Made {
         readQueueMax: Int32Array.from({ length: total }, (_, p) => p),
         writeQueueMax: new Int32Array(total).fill(2),
       },
+      banks: { count: 2, atoms: perBank(3), activates: perBank(1.5), conflicts: perBank(0.5) },
       bandwidthStack: stack,
+      kernelStack: stack.slice(0, STACK_CLASSES.length),
+      stackTimeline: { sliceCk: 800, slicePs: 500_000, classes: stack.slice(0, 2 * STACK_CLASSES.length) },
+      readWaitCk: new Float64Array(STACK_CLASSES.length).fill(10),
       engineComputePs: new Float64Array(4).fill(500_000),
       engineWindowPs: Float64Array.of(inWindows, 0, 0, 0),
       checks: [{ name: 'bytes asked are answered', ok: true, got: 4096, expected: 4096, tolerance: 0 }],

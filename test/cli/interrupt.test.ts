@@ -55,6 +55,23 @@ describe('an interrupt', () => {
   });
 });
 
+describe('a trace that is long in coming', () => {
+  test('does not hold up an interrupt', async () => {
+    const args = [join(ROOT, 'dist/cli/main.js'), 'run', '-', '-p', WAGTAIL];
+    const child = spawn(process.execPath, args, { stdio: ['pipe', 'pipe', 'pipe'] });
+    let out = '';
+    child.stdout.on('data', (text) => {
+      out += text;
+    });
+    child.stdin.write(`op,address,bytes\n${'R,0,64\n'.repeat(200_000)}`); // and stays open
+    setTimeout(() => child.kill('SIGINT'), 2 * AFTER_MS);
+    const code = await new Promise((resolve) => child.on('close', resolve));
+    child.stdin.destroy();
+    expect(code).toBe(130);
+    expect(out).toContain('Stopped before the trace ended');
+  });
+});
+
 describe('a reader that goes away', () => {
   test('is no error: synth stops, quietly', async () => {
     const args = [join(ROOT, 'dist/cli/main.js'), 'synth', 'uniform', '--bytes', '8GiB', '--out', '-'];
