@@ -9,6 +9,7 @@ const ROUNDS = Number(process.argv[2] ?? 3);
 const script = fileURLToPath(new URL('./cases.mjs', import.meta.url));
 const names = Object.keys(CASES);
 const rates = new Map(names.map((name) => [name, []]));
+const peaks = new Map(); // bytes of memory at most, by case
 console.log(
   `${cpus()[0].model.trim()}, ${cpus().length} cores, Node ${process.version}; seed 1, ${ROUNDS} rounds, each case in its own process`,
 );
@@ -19,16 +20,17 @@ for (let round = 0; round < ROUNDS; round++) {
       stdio: ['ignore', 'pipe', 'inherit'],
     });
     if (child.status !== 0) process.exit(1);
-    const { perSecond, sink } = JSON.parse(child.stdout);
+    const { perSecond, sink, peakBytes } = JSON.parse(child.stdout);
     if (!(sink > 0)) throw new Error(`${name}: nothing was done`);
     rates.get(name).push(perSecond);
+    peaks.set(name, Math.max(peakBytes, peaks.get(name) ?? 0));
   }
 }
 const best = (name) => Math.max(...rates.get(name));
 for (const name of names) {
   const low = Math.min(...rates.get(name));
   console.log(
-    `${name.padEnd(44)} ${(best(name) / 1e6).toFixed(2).padStart(6)} M atoms/s   slowest ${((100 * low) / best(name)).toFixed(0)} % of that`,
+    `${name.padEnd(44)} ${(best(name) / 1e6).toFixed(2).padStart(6)} M ${name.startsWith('machine') ? '     ' : 'atoms'}/s   slowest ${((100 * low) / best(name)).toFixed(0).padStart(3)} % of that   ${(peaks.get(name) / 1e6).toFixed(0).padStart(4)} MB`,
   );
 }
 const ratio = (a, b) => (best(a) / best(b)).toFixed(2);
@@ -47,4 +49,7 @@ console.log(
 );
 console.log(
   `  lone pointer chase of 100,000 accesses:                     ${(200_000 / best('lone pointer chase, 100,000 accesses')).toFixed(2)} s`,
+);
+console.log(
+  `  memory of 20 million rows / of 1 million:                   ${(peaks.get('access rows, 20 million') / peaks.get('access rows, 1 million')).toFixed(2)}`,
 );
