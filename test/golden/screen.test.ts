@@ -18,6 +18,7 @@ it('README shows what the demo prints', () => {
   const printed = execFileSync(process.execPath, args, { cwd: ROOT, encoding: 'utf8', env }).trimEnd();
   const text = readFileSync(README, 'utf8');
   const [from, to] = [text.indexOf(BEGIN) + BEGIN.length, text.indexOf(END)];
-  if (process.env['UPDATE_SCREEN']) writeFileSync(README, text.slice(0, from) + printed + text.slice(to));
+  const { UPDATE_SCREEN } = process.env;
+  if (UPDATE_SCREEN) writeFileSync(README, text.slice(0, from) + printed + text.slice(to));
   else expect(text.slice(from, to).split('\n')).toEqual(printed.split('\n'));
 }, 120_000);
