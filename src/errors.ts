@@ -49,7 +49,7 @@ export class SystemError extends Error {
 /** The word of `words` nearest to `word` by edit distance, or undefined when none is near enough to be meant. */
 export function nearest(word: string, words: readonly string[]): string | undefined {
   let best: string | undefined;
-  let least = Math.max(2, Math.floor(word.length / 2)) + 1;
+  let least = Math.min(Math.max(2, Math.floor(word.length / 2)) + 1, word.length); // something of the word must be left
   for (const candidate of words) {
     const distance = editDistance(word.toLowerCase(), candidate.toLowerCase());
     if (distance < least) {

@@ -56,16 +56,26 @@ export function auditLines(report: AuditReport, most = 10): string[] {
 
 /** What came, what it broke, and what it is counted from. */
 function violationLines({ rule, command, earlier, bound, required_ck, found_ck, note }: Violation): string[] {
-  const lines = [command === null ? 'at the end of the log' : commandLine(command)];
+  const lines = command === null ? ['at the end of the log'] : fitted('', command);
   const since = earlier === null ? ' since the start of the log' : '';
   if (bound === null) lines.push(`    ${rule}: ${note}`);
   else
     lines.push(`    ${rule}: ${bound} ${required_ck} ck, found ${found_ck}${since}${note === '' ? '' : ` (${note})`}`);
-  if (earlier !== null) lines.push(`    after ${commandLine(earlier)}`);
+  if (earlier !== null) lines.push(...fitted('    after ', earlier));
   return lines;
 }
 
-function commandLine(c: LoggedCommand): string {
+const WIDTH = 100;
+
+/** A command on one line, or with its place on a second one where it would not fit. */
+function fitted(lead: string, c: LoggedCommand): string[] {
+  const when = `${lead}line ${c.line}: ck ${c.ck} ${c.command}`;
+  const where = placeWords(c);
+  const whole = `${when} ${where}`;
+  return whole.length <= WIDTH ? [whole] : [when, `${' '.repeat(lead.length + 4)}${where}`];
+}
+
+function placeWords(c: LoggedCommand): string {
   const places = [
     `stack ${c.stack}`,
     `channel ${c.channel}.${c.pseudo_channel}`,
@@ -74,5 +84,5 @@ function commandLine(c: LoggedCommand): string {
     c.row === null ? '' : `row ${c.row}`,
     c.column === null ? '' : `column ${c.column}`,
   ];
-  return `line ${c.line}: ck ${c.ck} ${c.command} ${places.filter((place) => place !== '').join(' ')}`;
+  return places.filter((place) => place !== '').join(' ');
 }

@@ -5,6 +5,7 @@ import { isSystemError, systemError } from './system-error.js';
 import { UsageError } from './usage.js';
 
 export const OK = 0;
+export const FOUND_WORSE = 1; // an audit that found violations
 export const BAD_INPUT = 2;
 export const CHECKS_FAILED = 3;
 export const SYSTEM_FAILED = 4;

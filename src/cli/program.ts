@@ -1,6 +1,7 @@
 /** The command line's grammar: every command with its options, and what is said when something else was typed. */
 import yargs from 'yargs';
 import { VERSION } from '../index.js';
+import { audit } from './commands/audit.js';
 import { describe } from './commands/describe.js';
 import { run } from './commands/run.js';
 import { schema } from './commands/schema.js';
@@ -8,7 +9,7 @@ import { synth } from './commands/synth.js';
 import type { Session } from './session.js';
 import { usageError } from './usage.js';
 
-const COMMANDS = [run, describe, synth, schema];
+const COMMANDS = [run, describe, synth, audit, schema];
 const WIDTH = 100; // columns of the help, at most
 
 /** Understands the words after the program's name and does what they ask. Throws UsageError, or what the command throws. */
@@ -40,7 +41,7 @@ export async function program(argv: readonly string[], session: Session): Promis
       throw own ? error : usageError(complaint ?? error.message, argv, COMMANDS);
     })
     .epilogue(
-      'Exit codes: 0 fine, 2 the input is wrong, 3 the program’s own checks failed, 4 the system\nfailed, 130 interrupted.',
+      'Exit codes: 0 fine, 1 the audit found violations, 2 the input is wrong, 3 the program’s own checks\nfailed, 4 the system failed, 130 interrupted.',
     );
   for (const command of COMMANDS) command.add(cli, session);
   await cli.parseAsync();

@@ -64,7 +64,7 @@ export interface CommandBuses {
 export interface Refresh {
   readonly mode: 'all-bank' | 'per-bank' | 'off';
   readonly scope: 'pseudo_channel' | 'sid'; // what one REFab closes
-  readonly postpone: number; // all-bank refreshes that may be owed at once; the gap never exceeds (postpone + 1) x tREFI
+  readonly postpone: number; // 1 or more: refreshes of a bank that may be owed at once; the gap never exceeds (postpone + 1) x tREFI
   readonly pullIn: number; // refreshes that may be done ahead while idle
   readonly temperatureC: number; // tREFI already halved above 85
   readonly refpbInActivateWindow: boolean; // per-bank refreshes count in tRRD and tFAW

@@ -34,6 +34,15 @@ export function resolveMap(file: PackageFile['address_map'], memory: MemoryGroup
     row: o.rows,
     pseudo_channel: units.has('pseudo_channel') ? 1 : o.pseudo_channels,
   };
+  const unitBytes = Object.values(counts).reduce((product, count) => product * count, o.atom_bytes);
+  if (unitBytes % granuleBytes !== 0) {
+    throw new InputError({
+      where: place([path, 'granule']),
+      found: `a granule of ${formatBytes(granuleBytes)}`,
+      expected: `a granule that divides the ${formatBytes(unitBytes)} of one interleave unit`,
+      hint: 'with any other the last addresses would lie outside the device; powers of two always do',
+    });
+  }
   const bitsOf = (count: number): number => Math.ceil(Math.log2(count));
   const fields = file.fields.map((text) => {
     const [name, bits] = text.split(':');

@@ -146,7 +146,7 @@ function resolveLink(
     transfersPerS,
     flitBytes,
     flitOverheadBytes,
-    flitPs: (flitBytes / rawBytesPerS) * 1e12,
+    flitPs: (flitBytes * 1e12) / rawBytesPerS, // multiplied first: a flit time of whole ps comes out whole
     requestHeaderBytes: size('request_header'),
     responseHeaderBytes: size('response_header'),
     ackBytes: size('ack'),

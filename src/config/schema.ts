@@ -46,12 +46,10 @@ const refresh = z
       .enum(['pseudo_channel', 'sid'])
       .optional()
       .meta({ description: 'what one REFab closes; default: the device’s' }),
-    postpone: z
-      .int()
-      .min(0)
-      .max(8)
-      .optional()
-      .meta({ description: 'refreshes that may be owed at once; default: the device’s limit' }),
+    postpone: z.int().min(1).max(8).optional().meta({
+      description:
+        'refreshes that may be owed at once: one is owed from when it is due until the rows are closed, so 1 refreshes as soon as due; default: the device’s limit',
+    }),
     pull_in: z
       .int()
       .min(0)

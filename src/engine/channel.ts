@@ -202,6 +202,7 @@ const PULL_IN = 46;
 const GAP_LIMIT = 47; // longest wait before a refresh is forced, half clocks
 const REF_IN_WINDOW = 48;
 const ATTRIBUTION = 49;
+const REF_NAMES_SID = 50; // 1 where REFab closes one stack ID, whatever their number
 const columnSeparation = new Int32Array(1024); // see Separations.column
 const actSeparation = new Int32Array(1024);
 const windowShared = new Uint8Array(1024);
@@ -284,9 +285,11 @@ export function resetChannels(system: System, sep: Separations, memory: MemoryGr
   K[REF_UNITS] = K[REFRESH_MODE] === 2 || refresh.scope === 'sid' ? K[SIDS] : 1;
   K[POSTPONE] = refresh.postpone;
   K[PULL_IN] = K[REFRESH_MODE] === 1 ? refresh.pullIn : 0;
-  // a refresh is forced early enough to close the rows before the gap runs out
-  K[GAP_LIMIT] = (K[POSTPONE] + 1) * K[REFI] - (K[tRC] + K[WRITE_TO_PRE] + K[READ_TO_PRE] + K[tRP] + 64);
+  // a refresh is forced early enough to close the rows before the gap runs out, whatever was issued last and whoever has the bus
+  const closing = Math.max(K[tRC], Math.max(K[tRAS], K[READ_TO_PRE], K[WRITE_TO_PRE]) + K[tRP]) + 64;
+  K[GAP_LIMIT] = (K[POSTPONE] + 1) * K[REFI] - closing;
   K[REF_IN_WINDOW] = refresh.refpbInActivateWindow ? 1 : 0;
+  K[REF_NAMES_SID] = refresh.scope === 'sid' ? 1 : 0;
   K[ATTRIBUTION] = options.attribution ? 1 : 0;
   sink = options.onCommand;
   ORIGIN[EPOCH] = 0;
@@ -336,7 +339,7 @@ function layOut(p: number, total: number, readQueue: number): void {
       const interval = refreshStep();
       // phases are spread evenly over pseudo-channels and their units
       M[pr + DUE + u] = Math.max(1, Math.floor((interval * (p * K[REF_UNITS] + u + 1)) / (total * K[REF_UNITS])));
-      M[pr + LAST_REF + u] = 0;
+      M[pr + LAST_REF + u] = M[pr + DUE + u] - interval; // as if it had gone on for ever
     }
     setTick(pr);
   }
@@ -1099,10 +1102,10 @@ function refreshTick(pr: number, t: number): void {
     if (K[REFRESH_MODE] === 1) {
       const last = M[pr + LAST_COLUMN] === UNSET ? 0 : M[pr + LAST_COLUMN];
       const ahead = idle && owed > -K[PULL_IN] && t >= last + K[RFC_ALL];
-      const must = owed >= (K[POSTPONE] > 1 ? K[POSTPONE] : 1) || t >= M[pr + LAST_REF + u] + K[GAP_LIMIT];
+      const must = owed >= K[POSTPONE] || t >= M[pr + LAST_REF + u] + K[GAP_LIMIT];
       if (must || (idle && owed > 0) || ahead) wantAll(pr, u, t);
     } else if (owed > 0) {
-      const limit = K[POSTPONE] > 1 ? (K[POSTPONE] - 1) * K[BANKS_PER_SID] : 1;
+      const limit = K[POSTPONE] > 1 ? (K[POSTPONE] - 1) * K[BANKS_PER_SID] : 1; // else in order, as soon as due
       wantBank(pr, u, t, owed >= limit);
     }
   }
@@ -1162,9 +1165,9 @@ function setRefreshTime(pr: number, t: number): void {
       const open = openBanks(pr, u);
       const first = bankRecord(pseudoOf(pr), (u * K[BANKS]) / K[REF_UNITS]);
       for (let br = first; br < first + (K[BANKS] / K[REF_UNITS]) * BR_WORDS; br += BR_WORDS) {
-        if (open > 0) {
-          if (M[br + OPEN] >= 0) e = Math.max(e, M[br + PRE_READY], M[pr + PPD_READY]);
-        } else e = Math.max(e, M[br + ACT_READY]);
+        // PREA also waits for the own precharges that have not begun: a closed bank's PRE_READY is when its last one could
+        if (open > 0) e = Math.max(e, M[br + PRE_READY], M[pr + PPD_READY]);
+        else e = Math.max(e, M[br + ACT_READY]);
       }
     }
     M[pr + REF_TIME] = e;
@@ -1198,7 +1201,7 @@ function issueRefresh(pr: number, channel: number, t: number): void {
 }
 
 function prechargeAll(pr: number, p: number, unit: number, channel: number, t: number): void {
-  const sid = K[REF_UNITS] === 1 ? -1 : unit;
+  const sid = K[REF_NAMES_SID] === 1 ? unit : -1;
   precharges[p]++;
   rowBus[channel] = t + K[PRE_HOLD];
   if (K[ONE_BUS] === 1) columnBus[channel] = t + K[PRE_HOLD];
@@ -1214,7 +1217,7 @@ function refreshAll(pr: number, p: number, unit: number, channel: number, t: num
   refreshesAll[p]++;
   rowBus[channel] = t + K[REF_HOLD];
   if (K[ONE_BUS] === 1) columnBus[channel] = t + K[REF_HOLD];
-  if (sink !== null) sink(t + ORIGIN[EPOCH], p, K[REF_UNITS] === 1 ? -1 : unit, -1, -1, -1, -1, COMMAND.REFab, -1);
+  if (sink !== null) sink(t + ORIGIN[EPOCH], p, K[REF_NAMES_SID] === 1 ? unit : -1, -1, -1, -1, -1, COMMAND.REFab, -1);
   const end = t + K[RFC_ALL];
   M[pr + OWED + unit]--;
   M[pr + LAST_REF + unit] = t;

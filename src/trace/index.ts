@@ -11,7 +11,7 @@ export { FARTHEST_AFTER, LONGEST_ACCESS, MOST_KERNELS } from './access.js';
 export * from './batch.js';
 export { ACCESS_COLUMNS, KERNEL_COLUMNS } from './header.js';
 export { DEFAULT_TILE } from './kernels.js';
-export { openTrace, type TraceOptions } from './open.js';
+export { openBytes, openTrace, type TraceOptions } from './open.js';
 export { PATTERNS, parsePattern } from './pattern.js';
 export { placeKernels } from './place.js';
 export { type SynthOptions, synthesise } from './synth.js';

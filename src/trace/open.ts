@@ -37,7 +37,8 @@ export interface TraceOptions {
  */
 export async function openTrace(file: string, options: TraceOptions = {}): Promise<Trace> {
   const hash = createHash('sha256');
-  const blocks = readRows(await openBytes(file, options, hash), file);
+  const source = await openBytes(file, { input: options.input, hash, expected: 'a trace file, .csv or .csv.gz' });
+  const blocks = readRows(source, file);
   try {
     const tolerance = new Tolerance(options.skipBadRows ?? 0);
     const { header, rest } = await firstRow(blocks, file);
@@ -145,18 +146,27 @@ async function* withBlock(first: RowBlock, others: AsyncGenerator<RowBlock>): As
   }
 }
 
-/** The bytes of a trace, un-gzipped when it is gzip. The hash is fed with the bytes as they are stored. */
-async function openBytes(file: string, options: TraceOptions, hash: Hash): Promise<AsyncIterable<Buffer>> {
+export interface ByteSource {
+  readonly input: AsyncIterable<Buffer> | undefined; // what file '-' reads
+  readonly hash?: Hash; // fed with the bytes as they are stored
+  readonly expected: string; // what kind of file would do, for errors
+}
+
+/** The bytes of a text file, un-gzipped when it is gzip. Throws InputError when there is none to read, or SystemError. */
+export async function openBytes(
+  file: string,
+  { input, hash = createHash('sha256'), expected }: ByteSource,
+): Promise<AsyncIterable<Buffer>> {
   if (file === '-') {
-    if (options.input === undefined) {
+    if (input === undefined) {
       throw new InputError({
         where: { file },
         found: "'-', and no standard input to read",
-        expected: 'a stream handed in with the trace',
+        expected: 'a stream handed in with it',
         hint: 'name a file',
       });
     }
-    return decode(hashed(options.input, file, hash), file, 'by content');
+    return decode(hashed(input, file, hash), file, 'by content');
   }
   let found: string | null = null;
   try {
@@ -171,7 +181,7 @@ async function openBytes(file: string, options: TraceOptions, hash: Hash): Promi
     throw new InputError({
       where: { file },
       found,
-      expected: 'a trace file, .csv or .csv.gz',
+      expected,
       hint: found === 'a directory' ? 'name a file in it' : 'check the path',
     });
   }

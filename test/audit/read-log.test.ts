@@ -119,7 +119,7 @@ describe('refuses, with file, line and cell', () => {
     [
       'unknown command',
       { command: 'RDX' },
-      "log.csv:2:17: command: found 'RDX'; expected one of ACT, RD, RDA, WR, WRA, PRE, PREA, REFab, REFpb, RFMab, RFMpb. did you mean RD?",
+      "log.csv:2:19: command: found 'RDX'; expected one of ACT, RD, RDA, WR, WRA, PRE, PREA, REFab, REFpb, RFMab, RFMpb. did you mean RD?",
     ],
     ['command in small letters', { command: 'act' }, 'did you mean ACT?'],
     ['no command', { command: '' }, "command: found ''"],
@@ -152,7 +152,7 @@ describe('refuses, with file, line and cell', () => {
     ['half a row', { row: '1.5' }, "row: found '1.5'"],
     ['number and more', { column: '2x' }, "column: found '2x'"],
     ['a request too long', { request: '99999999999999999999' }, "request: found '99999999999999999999'"],
-    ['a request in words', { request: 'a' }, "log.csv:2:20: request: found 'a'"],
+    ['a request in words', { request: 'a' }, "log.csv:2:22: request: found 'a'"],
     ['NUL bytes', { row: '\0\0' }, "row: found '\\u0000\\u0000'"],
     ['quotes', { row: '"1"' }, 'row: found \'\\"1\\"\''],
   ])('%s', (_, change, message) => {
@@ -167,7 +167,7 @@ describe('refuses, with file, line and cell', () => {
       'log.csv:2: found a row of 12 cells; expected 11, as in the header',
     );
     expect(failure(`${HEADER}\n5\n`)).toBe('log.csv:2: found a row of 1 cell; expected 11, as in the header');
-    expect(failure(LOG.slice(0, -8))).toBe('log.csv:5: found a row of 10 cells; expected 11, as in the header');
+    expect(failure(LOG.slice(0, -8))).toBe('log.csv:5: found a row of 9 cells; expected 11, as in the header');
   });
 
   test('a REFab without its stack ID where it closes one', () => {

@@ -8,7 +8,7 @@ import { build, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 beforeAll(build, 120_000);
 
-const COMMANDS = ['run', 'describe', 'synth', 'schema'];
+const COMMANDS = ['run', 'describe', 'synth', 'audit', 'schema'];
 const TRACE = join(ROOT, 'traces/wagtail-step.csv');
 
 /** What must be refused: the arguments, the exit code, and what the message must say. */

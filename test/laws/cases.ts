@@ -47,10 +47,10 @@ export const PLAIN: Design = {
 
 export const REFRESHES = [
   'mode: off',
-  'mode: all-bank, postpone: 0, pull_in: 0',
+  'mode: all-bank, postpone: 1, pull_in: 0',
   'mode: all-bank, postpone: 2, pull_in: 2',
   'mode: all-bank, scope: sid, postpone: 2, pull_in: 1',
-  'mode: per-bank, postpone: 0',
+  'mode: per-bank, postpone: 1',
   'mode: per-bank, postpone: 4',
 ] as const;
 

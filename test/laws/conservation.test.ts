@@ -21,7 +21,6 @@ function atomsAsked(pkg: Package, rows: readonly Row[]): [number[], number[]] {
   return asked;
 }
 
-// fails: see asleep.test.ts
 it('every byte asked for is answered, and every atom crosses the right data bus or is served from a write queue', async () => {
   let forwardings = 0;
   await fc.assert(
@@ -76,7 +75,6 @@ it('every byte asked for is answered, and every atom crosses the right data bus 
   expect(forwardings).toBeGreaterThan(0); // or the cases say nothing about them
 });
 
-// fails: see asleep.test.ts
 it('requests are what the links carried: headers, data and acknowledgements', async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, async (design, work) => {

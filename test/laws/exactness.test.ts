@@ -49,7 +49,6 @@ async function sameInAnyWindow(
   return whole.recording;
 }
 
-// fails: see asleep.test.ts
 it('windows of any length give the same commands, samples and counters (access traces)', async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, anyReplay, async (design, work, replay) => {
@@ -70,7 +69,6 @@ strides,main,,0,16 KiB,0,strided stride=2KiB granule=512B,,4 KiB,1
 list,third,,0,1 KiB,0,chase granule=64B span=1MiB,,512 B,1
 `;
 
-// fails: see asleep.test.ts
 it('windows of any length give the same result (kernels, every kind of refresh)', async () => {
   for (const refresh of REFRESHES)
     for (const eastStacks of [0, 1]) {

@@ -203,7 +203,6 @@ describe('the address map is a bijection', () => {
     );
   });
 
-  // fails: resolve-map.ts only asks for a multiple of the atom, so 96 B is taken for a device of a power of two
   it('a granule that does not divide the device is refused, or the last addresses would lie outside it', () => {
     fc.assert(
       fc.property(

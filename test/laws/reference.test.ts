@@ -173,8 +173,7 @@ it.each(cases)('reads one at a time take what the rules say: %j', async (overrid
   }
 });
 
-// fails: activate() in channel.ts takes ACT_READY as when the ACT was wanted, though its request came later; tRCD of a bank that was
-// closed for long is then charged to the command bus (one read on an idle device: 26 ck of command_bus, none of row_cycle)
+// an ACT is wanted when its request has come, however long the bank had been closed before
 it.each(cases)('the bandwidth stack says what they waited for: %j', async (overrides) => {
   for (const seed of [1, 2, 3]) {
     const { recording, expected } = await both(overrides, seed);

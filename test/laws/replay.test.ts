@@ -32,7 +32,6 @@ async function byRow(
 }
 
 describe('times', () => {
-  // fails: see asleep.test.ts
   it('open loop keeps recorded times: every row is ready then, and issues at a clock edge after', async () => {
     await fc.assert(
       fc.asyncProperty(anyDesign, anyWork, async (design, work) => {
@@ -49,7 +48,6 @@ describe('times', () => {
     );
   });
 
-  // fails: see asleep.test.ts
   it('closed loop ignores them', async () => {
     await fc.assert(
       fc.asyncProperty(anyDesign, anyWork, async (design, work) => {
@@ -99,7 +97,6 @@ describe('times', () => {
 });
 
 describe('dependencies', () => {
-  // fails: see asleep.test.ts
   it('a row never issues before the row it depends on has returned, in any replay mode', async () => {
     await fc.assert(
       fc.asyncProperty(
@@ -303,7 +300,6 @@ describe('tiles', () => {
 });
 
 describe('a run cut short', () => {
-  // fails: see asleep.test.ts
   it('is a prefix of the whole run: commands, samples, and checks that hold', async () => {
     await fc.assert(
       fc.asyncProperty(

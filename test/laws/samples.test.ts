@@ -35,7 +35,6 @@ function occupancy(
   return { integral, most };
 }
 
-// fails: see asleep.test.ts
 it('stage delays are whole picoseconds, never negative, and add up from ready to done', async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, async (design, work) => {
@@ -58,7 +57,6 @@ it('stage delays are whole picoseconds, never negative, and add up from ready to
   );
 });
 
-// fails: see asleep.test.ts
 it('fixed delays are never undercut: transit, the read latency, the burst', async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, anyReplay, async (design, work, replay) => {
@@ -90,7 +88,6 @@ it('fixed delays are never undercut: transit, the read latency, the burst', asyn
   );
 });
 
-// fails: see asleep.test.ts
 it("Little's law holds for every stage, for the windows and for the queues", async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, anyReplay, async (design, work, replay) => {
@@ -153,7 +150,6 @@ it("Little's law holds for every stage, for the windows and for the queues", asy
   );
 });
 
-// fails: see asleep.test.ts
 it('nothing runs above its ceiling', async () => {
   await fc.assert(
     fc.asyncProperty(anyDesign, anyWork, anyReplay, async (design, work, replay) => {
