@@ -13,13 +13,17 @@ export const FARTHEST_AFTER = 1024;
 /** Names of kernels are held for the whole run, so there is an end to them. */
 export const MOST_KERNELS = 65536;
 
-const OPS: ReadonlyMap<string, number> = new Map([
+/** Words of the op column when the trace has our own. */
+export const OPS: ReadonlyMap<string, number> = new Map([
   ['r', READ],
   ['read', READ],
   ['w', WRITE],
   ['write', WRITE],
 ]);
-const LATEST_PS = 2 ** 53 - 1;
+export const LATEST_PS = 2 ** 53 - 1;
+
+/** Picoseconds of one unit, by column. */
+const TIME_SCALES = { time_ps: 1, time_ns: 1e3, time_us: 1e6, time_ms: 1e9, time_s: 1e12 };
 
 /** What the cells are checked against; empty and infinite where the package is not known. */
 export interface AccessLimits {
@@ -36,9 +40,10 @@ export class AccessRows {
 
   private readonly cells: Cells;
   private readonly kernelIndex = new Map<string, number>();
-  private readonly at; // position of each column, -1 where the trace has none
-  private readonly timeScale: number; // ps of one unit of the time column
-  private lastTime = 0;
+  readonly at; // position of each column, -1 where the trace has none
+  readonly timeScale: number; // ps of one unit of the time column
+  readonly ops: ReadonlyMap<string, number>;
+  lastTime = 0; // ps, of the row before
   private lastTimeLine = 0;
 
   constructor(
@@ -48,16 +53,18 @@ export class AccessRows {
   ) {
     this.cells = new Cells(file, header);
     const position = (name: string) => this.cells.position(name);
-    const timeName = ['time_ps', 'time_ns', 'time_us', 'cycle'].find((name) => position(name) >= 0) ?? '';
+    this.ops = header.shape.ops ?? OPS;
+    const scales: Readonly<Record<string, number>> = { ...TIME_SCALES, cycle: limits.cyclePs };
+    const timeName = Object.keys(scales).find((name) => position(name) >= 0) ?? '';
     if (timeName === 'cycle' && !(limits.cyclePs > 0)) {
       throw new InputError({
         where: { file, line: header.line, path: 'cycle' },
         found: "a column 'cycle', and no clock it counts",
         expected: 'the period of that clock',
-        hint: 'give the clock, or convert the column to time_ps, time_ns or time_us',
+        hint: 'give the clock with --clock, or convert the column to time_ps, time_ns or time_us',
       });
     }
-    this.timeScale = { time_ps: 1, time_ns: 1e3, time_us: 1e6, cycle: limits.cyclePs }[timeName] ?? 1;
+    this.timeScale = scales[timeName] ?? 1;
     this.at = {
       op: position('op'),
       address: position('address'),
@@ -88,10 +95,13 @@ export class AccessRows {
   }
 
   add(row: readonly string[], line: number): void {
-    const { cells, at, batch, limits } = this;
+    const { cells, at, limits } = this;
     cells.enter(row, line);
-    const op = OPS.get(cells.text(at.op).toLowerCase());
-    if (op === undefined) throw cells.fault(at.op, 'R, W, read or write', 'one access a row');
+    const op = this.ops.get(cells.text(at.op).toLowerCase());
+    if (op === undefined) {
+      const words = this.ops === OPS ? 'R, W, read or write' : [...this.ops.keys()].join(', ');
+      throw cells.fault(at.op, words, 'one access a row');
+    }
     const address = cells.address(at.address);
     const bytes = cells.whole(at.bytes, 1, LONGEST_ACCESS, 'the bytes of one access');
     const owner = this.owner(address, bytes);
@@ -104,7 +114,24 @@ export class AccessRows {
     const after = this.empty(at.after) ? 0 : cells.whole(at.after, 0, FARTHEST_AFTER, 'rows back on this engine');
     const kernel = this.kernel();
 
-    // nothing below can fail
+    this.put(op, address, bytes, timePs, die, engine, kernel, tile, flops, after, Math.abs(line));
+  }
+
+  /** Adds a row that has been checked. */
+  put(
+    op: number,
+    address: number,
+    bytes: number,
+    timePs: number,
+    die: number,
+    engine: number,
+    kernel: number,
+    tile: number,
+    flops: number,
+    after: number,
+    line: number,
+  ): void {
+    const { batch } = this;
     const i = batch.count++;
     batch.op[i] = op;
     batch.address[i] = address;
@@ -113,7 +140,7 @@ export class AccessRows {
     if (batch.timePs !== null) {
       batch.timePs[i] = timePs;
       this.lastTime = timePs;
-      this.lastTimeLine = Math.abs(line);
+      this.lastTimeLine = line;
     }
     if (batch.die !== null) batch.die[i] = die;
     if (batch.engine !== null) batch.engine[i] = engine;
@@ -126,15 +153,27 @@ export class AccessRows {
     return position < 0 || this.cells.text(position) === '';
   }
 
-  private dieCount(): number {
+  dieCount(): number {
     const { geometry, dieNames } = this.limits;
     return geometry.length || dieNames.length || 1024;
   }
 
-  /** The die whose memory an access falls in, -1 when that is not known. Checks that it falls in one and not beyond the last. */
+  /** The die whose memory an access falls in; -1 when that is not known, -2 when it is beyond memory or in two dies'. */
+  ownerOf(address: number, end: number): number {
+    const { capacity, geometry } = this.limits;
+    if (end > capacity) return -2;
+    for (let die = 0; die < geometry.length; die++) {
+      const { base, capacity: size } = geometry[die];
+      if (address >= base && address < base + size) return end <= base + size ? die : -2;
+    }
+    return -1;
+  }
+
   private owner(address: number, bytes: number): number {
     const { capacity, geometry } = this.limits;
     const end = address + bytes;
+    const owner = this.ownerOf(address, end);
+    if (owner !== -2) return owner;
     if (end > capacity) {
       throw this.cells.fault(
         this.at.address,
@@ -143,22 +182,21 @@ export class AccessRows {
         `'${this.cells.text(this.at.address)}', ${end - capacity} bytes beyond the end of memory`,
       );
     }
-    for (let die = 0; die < geometry.length; die++) {
-      const { base, capacity: size } = geometry[die];
-      if (address < base || address >= base + size) continue;
-      if (end <= base + size) return die;
-      throw this.cells.fault(
-        this.at.address,
-        'an access inside the memory of one die',
-        `split it at address ${base + size}, where the memory of the next die begins`,
-      );
-    }
-    return -1;
+    const within = geometry.find(({ base, capacity: size }) => address >= base && address < base + size);
+    throw this.cells.fault(
+      this.at.address,
+      'an access inside the memory of one die',
+      `split it at address ${(within?.base ?? 0) + (within?.capacity ?? 0)}, where the memory of the next die begins`,
+    );
+  }
+
+  /** Engines of a die, as far as they are known. */
+  enginesOf(die: number): number {
+    return this.limits.geometry[die]?.engines ?? 2 ** 20;
   }
 
   private engine(die: number): number {
-    const engines = this.limits.geometry[die]?.engines ?? 2 ** 20;
-    return this.cells.whole(this.at.engine, 0, engines - 1, 'an engine of the die');
+    return this.cells.whole(this.at.engine, 0, this.enginesOf(die) - 1, 'an engine of the die');
   }
 
   private time(): number {
@@ -179,16 +217,21 @@ export class AccessRows {
 
   /** Number of the row's kernel; rows of a trace without that column, or with an empty cell, are of one nameless kernel. */
   private kernel(): number {
-    const name = this.cells.text(this.at.kernel) || (this.at.kernel < 0 ? 'trace' : '(unnamed)');
+    const kernel = this.kernelOf(this.cells.text(this.at.kernel));
+    if (kernel >= 0) return kernel;
+    throw this.cells.fault(
+      this.at.kernel,
+      `at most ${MOST_KERNELS} different kernels in a trace`,
+      "number launches in column 'tile', not in the kernel's name",
+    );
+  }
+
+  /** Number of a kernel by its cell; -1 when there are too many. */
+  kernelOf(cell: string): number {
+    const name = cell || (this.at.kernel < 0 ? 'trace' : '(unnamed)');
     const known = this.kernelIndex.get(name);
     if (known !== undefined) return known;
-    if (this.kernelNames.length === MOST_KERNELS) {
-      throw this.cells.fault(
-        this.at.kernel,
-        `at most ${MOST_KERNELS} different kernels in a trace`,
-        "number launches in column 'tile', not in the kernel's name",
-      );
-    }
+    if (this.kernelNames.length === MOST_KERNELS) return -1;
     this.kernelIndex.set(name, this.kernelNames.length);
     return this.kernelNames.push(name) - 1;
   }

@@ -3,6 +3,7 @@ import { InputError, nearest, type Where } from '../errors.js';
 import type { Header } from './header.js';
 
 const WHOLE = /^\d{1,17}$/;
+const HEX = /^(?:0[xX])?[0-9a-fA-F]{1,16}$/;
 const ADDRESS = /^(?:0[xX][0-9a-fA-F]{1,16}|\d{1,17})$/;
 const DECIMAL = /^(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?$/;
 
@@ -29,7 +30,7 @@ export class Cells {
       hint:
         row.length < names.length
           ? `the row ends before '${names[row.length]}'; leave cells empty, but keep their commas`
-          : 'put quotes round a cell that contains a comma',
+          : `put quotes round a cell that contains ${this.header.shape.delimiter === ',' ? 'a comma' : 'the delimiter'}`,
     });
   }
 
@@ -40,7 +41,9 @@ export class Cells {
 
   /** The cell at a position without blanks around it; '' when the trace has no such column. */
   text(position: number): string {
-    return position < 0 ? '' : this.row[position].trim();
+    if (position < 0) return '';
+    const { names, values } = this.header;
+    return (position < names.length ? this.row[position] : values[position - names.length]).trim();
   }
 
   /** A whole number from `least` to `most`. */
@@ -54,14 +57,18 @@ export class Cells {
   /** An address: decimal or 0x and hexadecimal digits, below 2^52. */
   address(position: number): number {
     const text = this.text(position);
-    const value = ADDRESS.test(text) ? Number(text) : Number.NaN;
+    const { hex } = this.header;
+    const value = (hex ? HEX : ADDRESS).test(text)
+      ? Number(hex && !/^0x/i.test(text) ? `0x${text}` : text)
+      : Number.NaN;
     if (value < 4503599627370496) return value;
     const hint = Number.isNaN(value)
       ? /^[0-9a-fA-F]+$/.test(text)
         ? `hexadecimal needs 0x in front: 0x${text.slice(0, 16)}`
         : 'for example 4096 or 0x1000'
       : 'the address space ends at 2^52';
-    throw this.fault(position, 'an address: decimal, or hexadecimal with 0x, below 2^52', hint);
+    const form = hex ? 'hexadecimal digits' : 'decimal, or hexadecimal with 0x';
+    throw this.fault(position, `an address: ${form}, below 2^52`, hint);
   }
 
   /** A number, whole or not, from 0 up. */
@@ -91,7 +98,11 @@ export class Cells {
   /** Where a cell of this row stands; without its column on the line when quotes make that unknown. */
   where(position: number): Where {
     const line = Math.abs(this.line);
-    const path = this.header.names[position];
+    const { names, at } = this.header;
+    // a value of every row stands on the command line, not in the row
+    if (position >= names.length)
+      return { file: this.file, line, path: [...at].find(([, other]) => other === position)?.[0] };
+    const path = names[position];
     if (this.line < 0) return { file: this.file, line, path };
     let column = 1;
     for (let i = 0; i < position; i++) column += this.row[i].length + 1;
@@ -100,7 +111,7 @@ export class Cells {
 
   /** The error for a cell of this row. */
   fault(position: number, expected: string, hint: string, found?: string): InputError {
-    const text = this.row[position] ?? '';
+    const text = this.text(position);
     const shown = text.length > 60 ? `${text.slice(0, 60)}…` : text;
     return new InputError({
       where: this.where(position),

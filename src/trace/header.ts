@@ -1,31 +1,33 @@
 /** The header row of a trace: which kind of trace it is, and which cell of a row holds which column. */
 import { InputError, nearest } from '../errors.js';
+import { ACCESS_COLUMNS, KERNEL_COLUMNS } from './columns.js';
+import { OWN_SHAPE, type Shape } from './shape.js';
 
 export type TraceKind = 'access' | 'kernel';
-
-/** Columns of an access trace. At most one of the time columns may be there. */
-export const ACCESS_COLUMNS = {
-  required: ['op', 'address', 'bytes'],
-  time: ['time_ps', 'time_ns', 'time_us', 'cycle'],
-  optional: ['die', 'engine', 'kernel', 'tile', 'flops', 'after'],
-} as const;
-
-/** Columns of a kernel trace. A cell of a required column may still be empty where the column has a default. */
-export const KERNEL_COLUMNS = {
-  required: ['kernel', 'stream', 'format', 'flops', 'read', 'write', 'read_pattern', 'write_pattern'],
-  optional: ['tile', 'die', 'repeat', 'estimate_us'],
-} as const;
 
 export interface Header {
   readonly kind: TraceKind;
   readonly names: readonly string[]; // as written, by position
   readonly line: number;
-  readonly at: ReadonlyMap<string, number>; // position of each column
+  readonly at: ReadonlyMap<string, number>; // position of each column; from names.length on: values
+  readonly values: readonly string[]; // cells that every row has behind those of the file
+  readonly hex: boolean; // addresses are hexadecimal without 0x
+  readonly shape: Shape;
 }
 
+const TIME_UNITS: Readonly<Record<string, string>> = {
+  ps: 'time_ps',
+  ns: 'time_ns',
+  us: 'time_us',
+  ms: 'time_ms',
+  s: 'time_s',
+  cycle: 'cycle',
+};
+
 /** Understands a header row. Throws InputError for a column that is missing, unknown or there twice. */
-export function readHeader(row: readonly string[], line: number, file: string): Header {
+export function readHeader(row: readonly string[], line: number, file: string, shape: Shape = OWN_SHAPE): Header {
   const names = row.map((cell) => cell.trim());
+  if (shape !== OWN_SHAPE) return capturedHeader(names, line, file, shape);
   const kind = kindOf(names, line, file);
   const required: readonly string[] = kind === 'access' ? ACCESS_COLUMNS.required : KERNEL_COLUMNS.required;
   const optional: readonly string[] =
@@ -34,14 +36,7 @@ export function readHeader(row: readonly string[], line: number, file: string): 
   const where = { file, line };
   const at = new Map<string, number>();
   names.forEach((name, position) => {
-    if (at.has(name)) {
-      throw new InputError({
-        where: { ...where, path: name },
-        found: `column '${name}' twice`,
-        expected: 'each column once',
-        hint: 'remove or rename one of them',
-      });
-    }
+    if (at.has(name)) throw twice(name, where);
     at.set(name, position);
   });
   for (const name of required) {
@@ -78,7 +73,63 @@ export function readHeader(row: readonly string[], line: number, file: string): 
       });
     }
   }
-  return { kind, names, line, at };
+  return { kind, names, line, at, values: [], hex: false, shape };
+}
+
+function twice(name: string, where: { readonly file: string; readonly line: number }): InputError {
+  return new InputError({
+    where: { ...where, path: name },
+    found: `column '${name}' twice`,
+    expected: 'each column once',
+    hint: 'remove or rename one of them',
+  });
+}
+
+/** The header of a captured trace: the columns its shape names, then those with our own names; all others are passed over. */
+function capturedHeader(names: readonly string[], line: number, file: string, shape: Shape): Header {
+  const where = { file, line };
+  const at = new Map<string, number>();
+  const values: string[] = [];
+  let hex = false;
+  for (const [column, source] of shape.columns) {
+    const unit = source.kind === 'column' ? source.unit : '';
+    const name = column === 'time' ? (TIME_UNITS[unit] ?? 'time_ps') : column;
+    if (source.kind === 'value') {
+      at.set(name, names.length + values.length);
+      values.push(source.text);
+      continue;
+    }
+    const position = names.indexOf(source.name);
+    if (position < 0) {
+      const like = nearest(source.name, names);
+      throw new InputError({
+        where,
+        found: `no column '${source.name}' among ${list(names)}`,
+        expected: `the column that is our '${column}'`,
+        hint: like === undefined ? 'names are those of the header row' : `did you mean '${like}'?`,
+      });
+    }
+    if (names.lastIndexOf(source.name) !== position) throw twice(source.name, where);
+    at.set(name, position);
+    if (unit === 'hex') hex = true;
+  }
+  const timed = Object.values(TIME_UNITS).some((name) => at.has(name));
+  for (const name of [...ACCESS_COLUMNS.required, ...ACCESS_COLUMNS.optional, ...(timed ? [] : ACCESS_COLUMNS.time)]) {
+    const position = names.indexOf(name);
+    if (at.has(name) || position < 0) continue;
+    if (names.lastIndexOf(name) !== position) throw twice(name, where);
+    at.set(name, position);
+  }
+  for (const name of ACCESS_COLUMNS.required) {
+    if (at.has(name)) continue;
+    throw new InputError({
+      where,
+      found: `no column '${name}' among ${list(names)}`,
+      expected: `all of ${ACCESS_COLUMNS.required.join(', ')}`,
+      hint: `say which column it is (${name}=…), or one value for all rows (${name}==…)`,
+    });
+  }
+  return { kind: 'access', names, line, at, values, hex, shape };
 }
 
 /** The kind whose own columns (those the other kind has not) are more. */

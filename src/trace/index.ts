@@ -9,11 +9,13 @@
  */
 export { FARTHEST_AFTER, LONGEST_ACCESS, MOST_KERNELS } from './access.js';
 export * from './batch.js';
-export { ACCESS_COLUMNS, KERNEL_COLUMNS } from './header.js';
+export { ACCESS_COLUMNS, KERNEL_COLUMNS } from './columns.js';
 export { DEFAULT_TILE } from './kernels.js';
 export { openBytes, openTrace, type TraceOptions } from './open.js';
 export { PATTERNS, parsePattern } from './pattern.js';
 export { placeKernels } from './place.js';
+export { OWN_SHAPE, parseShape, type Shape, type ShapeText } from './shape.js';
+export { type ShapeFile, shapeFile } from './shape-file.js';
 export { type SynthOptions, synthesise } from './synth.js';
 export { createTileWalk } from './walk.js';
 export { accessCsv } from './write.js';

@@ -6,13 +6,16 @@ import { createHash, type Hash } from 'node:crypto';
 import { createReadStream } from 'node:fs';
 import { stat } from 'node:fs/promises';
 import { InputError } from '../errors.js';
-import { AccessRows, BATCH_ROWS } from './access.js';
-import type { AccessBatch, AccessTrace, DieGeometry, Trace, TraceFacts } from './batch.js';
+import { AccessRows } from './access.js';
+import { joined, type Reading, readBlocks, readPlain } from './access-rows.js';
+import type { AccessBatch, AccessTrace, DieGeometry, Trace } from './batch.js';
 import { CHUNK, decode, hashed, unreadable } from './bytes.js';
 import { type Header, readHeader } from './header.js';
 import { readKernels } from './kernels.js';
+import { LONGEST_RECORD } from './records.js';
 import { type RowBlock, readRows } from './rows.js';
-import { noRows, Tolerance } from './tolerance.js';
+import { OWN_SHAPE, type Shape } from './shape.js';
+import { Tolerance } from './tolerance.js';
 
 export interface TraceOptions {
   /** Bad rows that are skipped and counted before one stops the reading; 0 when left out. */
@@ -25,6 +28,8 @@ export interface TraceOptions {
   readonly geometry?: readonly DieGeometry[];
   /** Period of the clock that column `cycle` counts, ps. */
   readonly cyclePs?: number;
+  /** Columns, words and delimiter of a captured trace; our own when left out. */
+  readonly shape?: Shape;
   /** What file '-' reads: standard input. */
   readonly input?: AsyncIterable<Buffer>;
 }
@@ -37,35 +42,53 @@ export interface TraceOptions {
  */
 export async function openTrace(file: string, options: TraceOptions = {}): Promise<Trace> {
   const hash = createHash('sha256');
-  const source = await openBytes(file, { input: options.input, hash, expected: 'a trace file, .csv or .csv.gz' });
-  const blocks = readRows(source, file);
+  const expected = 'a trace file, .csv or .csv.gz';
+  const bytes = await openBytes(file, { input: options.input, hash, expected });
+  const source = bytes[Symbol.asyncIterator]();
+  const shape = options.shape ?? OWN_SHAPE;
+  const tolerance = new Tolerance(options.skipBadRows ?? 0);
   try {
-    const tolerance = new Tolerance(options.skipBadRows ?? 0);
-    const { header, rest } = await firstRow(blocks, file);
+    const head = await readHead(source);
+    if (head.end > 0) {
+      const row = head.data
+        .toString('utf8', head.start, head.end)
+        .replace(/\r?\n$/, '')
+        .split(shape.delimiter);
+      const header = readHeader(row, head.line, file, shape);
+      if (header.kind === 'access') {
+        const reading = startReading(file, header, tolerance, options, hash);
+        return await accessTrace(reading, readPlain(reading, source, head.data.subarray(head.end), head.line + 1));
+      }
+    }
+    // a kernel trace, or one that begins with something odd
+    const blocks = readRows(joined(head.data, source), file, shape.delimiter);
+    const { header, rest } = await firstRow(blocks, file, shape);
     const rows = withBlock(rest, blocks);
-    if (header.kind === 'access') return await openAccess(file, header, rows, tolerance, options, hash);
+    if (header.kind === 'access') {
+      const reading = startReading(file, header, tolerance, options, hash);
+      return await accessTrace(reading, readBlocks(reading, rows));
+    }
     const { dieNames = [], geometry = [] } = options;
     return await readKernels(file, header, rows, tolerance, dieNames, geometry, () => hash.digest('hex'));
   } catch (error) {
-    await blocks.return(undefined); // closes the file
+    await source.return?.(); // closes the file
     throw error;
   }
 }
 
-async function openAccess(
-  file: string,
-  header: Header,
-  rows: AsyncIterable<RowBlock>,
-  tolerance: Tolerance,
-  options: TraceOptions,
-  hash: Hash,
-): Promise<AccessTrace> {
+function startReading(file: string, header: Header, tolerance: Tolerance, options: TraceOptions, hash: Hash): Reading {
   const { dieNames = [], geometry = [], cyclePs = 0 } = options;
   const end = geometry.length > 0 ? Math.max(...geometry.map((die) => die.base + die.capacity)) : 2 ** 52;
   const access = new AccessRows(file, header, { dieNames, geometry, capacity: options.capacity ?? end, cyclePs });
-  const facts = { rows: 0, skippedRows: 0, hash: '' };
-  const reading = readBatches(file, access, rows, tolerance, facts, hash);
-  const first = await reading.next();
+  return { file, header, access, tolerance, facts: { rows: 0, skippedRows: 0, hash: '' }, hash };
+}
+
+/** Reads the first batch, so that what is wrong near the top of a trace is said when it is opened. */
+async function accessTrace(
+  { file, access, facts }: Reading,
+  batches: AsyncGenerator<AccessBatch, undefined>,
+): Promise<AccessTrace> {
+  const first = await batches.next();
   let begun = false;
   return {
     kind: 'access',
@@ -77,51 +100,53 @@ async function openAccess(
       begun = true;
       try {
         if (!first.done) yield first.value;
-        yield* reading;
+        yield* batches;
       } finally {
-        await reading.return(undefined);
+        await batches.return(undefined);
       }
     },
     facts: () => ({ ...facts }),
   };
 }
 
-/** Fills and hands out the batch until the rows end; `facts` grow on the way, the hash is known at the end. */
-async function* readBatches(
-  file: string,
-  access: AccessRows,
-  blocks: AsyncIterable<RowBlock>,
-  tolerance: Tolerance,
-  facts: { -readonly [K in keyof TraceFacts]: TraceFacts[K] },
-  hash: Hash,
-): AsyncGenerator<AccessBatch, undefined> {
-  const { batch } = access;
-  for await (const { rows, lines, fault, fatal } of blocks) {
-    for (let i = 0; i < rows.length; i++) {
-      try {
-        access.add(rows[i], lines[i]);
-      } catch (error) {
-        tolerance.skip(error);
-      }
-      if (batch.count < BATCH_ROWS) continue;
-      facts.rows += batch.count;
-      facts.skippedRows = tolerance.skipped;
-      yield batch;
-      batch.count = 0;
+/** What a trace begins with: its header is bytes `start` up to `end` of `data`; `end` 0 when quotes or NUL make it more than a line. */
+interface Head {
+  readonly data: Buffer;
+  readonly start: number;
+  readonly end: number;
+  readonly line: number;
+}
+
+/** Reads until the first line that is neither blank nor a comment has come whole. */
+async function readHead(source: AsyncIterator<Buffer>): Promise<Head> {
+  let data: Buffer = Buffer.alloc(0);
+  let start = 0;
+  let line = 1;
+  for (;;) {
+    const { done, value } = await source.next();
+    if (!done) data = data.length === 0 ? value : Buffer.concat([data, value]);
+    if (start === 0 && data[0] === 0xef && data[1] === 0xbb && data[2] === 0xbf) start = 3; // UTF-8 byte order mark
+    for (;;) {
+      const newline = data.indexOf(10, start);
+      if (newline < 0) break;
+      const text = data.toString('latin1', start, newline);
+      if (/["\0]|\r./.test(text)) return { data, start, end: 0, line };
+      if (!/^\s*(#|$)/.test(text)) return { data, start, end: newline + 1, line };
+      start = newline + 1;
+      line++;
     }
-    if (fault !== null && fatal) throw fault;
-    if (fault !== null) tolerance.skip(fault);
+    // without an end, or with one too far away, it is the other reader's to say what is wrong
+    if (done || data.length - start > LONGEST_RECORD || data.indexOf(0, start) >= 0)
+      return { data, start, end: 0, line };
   }
-  facts.rows += batch.count;
-  facts.skippedRows = tolerance.skipped;
-  facts.hash = hash.digest('hex');
-  if (facts.rows === 0) throw noRows(file, tolerance.skipped);
-  if (batch.count > 0) yield batch;
-  batch.count = 0;
 }
 
 /** Takes the header row and gives back the rest of its block. */
-async function firstRow(blocks: AsyncGenerator<RowBlock>, file: string): Promise<{ header: Header; rest: RowBlock }> {
+async function firstRow(
+  blocks: AsyncGenerator<RowBlock>,
+  file: string,
+  shape: Shape,
+): Promise<{ header: Header; rest: RowBlock }> {
   const { value: block, done } = await blocks.next();
   if (done) {
     throw new InputError({
@@ -133,7 +158,7 @@ async function firstRow(blocks: AsyncGenerator<RowBlock>, file: string): Promise
   }
   // without a good header no row can be understood, so its faults cannot be skipped
   if (block.rows.length === 0) throw block.fault;
-  const header = readHeader(block.rows[0], Math.abs(block.lines[0]), file);
+  const header = readHeader(block.rows[0], Math.abs(block.lines[0]), file, shape);
   return { header, rest: { ...block, rows: block.rows.slice(1), lines: block.lines.slice(1) } };
 }
 

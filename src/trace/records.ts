@@ -21,12 +21,14 @@ export interface RecordBlock {
 const NEWLINE = 10;
 const RETURN = 13;
 const QUOTE = 34;
-const COMMA = 44;
 const HASH = 35;
 
 /** Splits a byte stream. Failures of the source itself come out as the errors they are. */
-export async function* splitRecords(source: AsyncIterable<Buffer>, file: string): AsyncGenerator<RecordBlock> {
-  const splitter = new Splitter(file);
+export async function* splitRecords(
+  source: AsyncIterable<Buffer>,
+  file: string,
+  splitter: Splitter = new Splitter(file),
+): AsyncGenerator<RecordBlock> {
   for await (const chunk of source) {
     yield* splitter.push(chunk, false);
     if (splitter.stopped) return;
@@ -34,13 +36,20 @@ export async function* splitRecords(source: AsyncIterable<Buffer>, file: string)
   yield* splitter.push(Buffer.from('\n'), true);
 }
 
-class Splitter {
+/** Finds the records of a stream of bytes. */
+export class Splitter {
   stopped = false;
   private pending: Buffer = Buffer.alloc(0); // start of a record that has not ended yet
-  private line = 1; // number of the line at the start of `pending`
-  private started = false; // the first three bytes, which may be a byte order mark, have been seen
+  private started: boolean; // the first three bytes, which may be a byte order mark, have been seen
 
-  constructor(private readonly file: string) {}
+  /** `line`: number of the first line it will see; of the first of the file a byte order mark is passed over. */
+  constructor(
+    private readonly file: string,
+    private readonly delimiter = ',',
+    private line = 1, // number of the line at the start of `pending`
+  ) {
+    this.started = line > 1;
+  }
 
   *push(chunk: Buffer, last: boolean): Generator<RecordBlock> {
     const data = this.pending.length > 0 ? Buffer.concat([this.pending, chunk]) : chunk;
@@ -85,7 +94,7 @@ class Splitter {
       if (quote >= 0 && quote < at) quote = data.indexOf(QUOTE, at);
       const quoted = quote >= 0 && quote < newline;
       if (quoted) {
-        const scan = scanQuoted(data, at);
+        const scan = scanQuoted(data, at, this.delimiter.charCodeAt(0));
         if (scan.end < 0 && !last) {
           if (data.length - at <= LONGEST_RECORD) break;
           yield this.stop(text + data.toString('utf8', kept, at), lines, this.tooLong('quoted cell'));
@@ -184,7 +193,7 @@ function count(data: Buffer, byte: number, from: number): number {
  * Follows the quotes of a record: where it ends (-1: not in this data), how many line ends it holds, and where text follows a
  * closing quote (-1: nowhere). A quote opens a cell only as the first thing in it; elsewhere it is an ordinary character.
  */
-function scanQuoted(data: Buffer, from: number): { end: number; newlines: number; badAt: number } {
+function scanQuoted(data: Buffer, from: number, delimiter: number): { end: number; newlines: number; badAt: number } {
   let state: 'start' | 'plain' | 'quoted' | 'closed' = 'start';
   let newlines = 0;
   let badAt = -1;
@@ -197,7 +206,7 @@ function scanQuoted(data: Buffer, from: number): { end: number; newlines: number
       if (byte !== QUOTE) continue;
       if (data[i + 1] === QUOTE) i++;
       else state = 'closed';
-    } else if (byte === COMMA) {
+    } else if (byte === delimiter) {
       state = 'start';
     } else if (byte === QUOTE && state === 'start') {
       state = 'quoted';

@@ -7,12 +7,13 @@ import { loadPackage } from '../../config/index.js';
 import { run as simulate } from '../../engine/index.js';
 import { VERSION } from '../../index.js';
 import { jsonReport, textReport } from '../../report/index.js';
-import { command, PACKAGE, SET, wholeNumber } from '../command.js';
+import { command, PACKAGE, SET } from '../command.js';
 import { CommandLog } from '../command-log.js';
 import { CHECKS_FAILED } from '../failure.js';
 import { OutputFile } from '../output.js';
 import { ProgressBar } from '../progress.js';
 import { parseUntil } from '../quantities.js';
+import { SHAPE } from '../shape.js';
 import { openFor, usefulBytes } from '../trace.js';
 
 export const run = command({
@@ -32,17 +33,7 @@ export const run = command({
     },
     seed: { type: 'string', default: '1', requiresArg: true, describe: 'seed of the random patterns' },
     until: { type: 'string', requiresArg: true, describe: 'stop at this simulated time, for example 2ms' },
-    clock: {
-      type: 'string',
-      requiresArg: true,
-      describe: 'frequency of the clock that column cycle counts, for example 1.7GHz',
-    },
-    'skip-bad-rows': {
-      type: 'string',
-      default: '0',
-      requiresArg: true,
-      describe: 'bad rows of the trace to skip and count before one stops the run',
-    },
+    ...SHAPE,
     json: {
       type: 'string',
       requiresArg: true,
@@ -62,14 +53,17 @@ export const run = command({
       'the first 20 us, with every DRAM command',
     ],
     ['run access.csv.gz -p configs/wagtail.yaml --replay open', 'recorded times as arrivals'],
+    [
+      'run capture.csv -p configs/wagtail.yaml --columns address=Addr:hex,op=Kind,bytes==64 --ops read=LD,write=ST',
+      'a captured trace',
+    ],
   ],
   main: async (args, session) => {
     // the package, with the overrides laid over it
     const pkg = loadPackage(args.package, args.set);
 
     // the trace: its rows are read as the engine asks for them
-    const skipBadRows = wholeNumber('--skip-bad-rows', args['skip-bad-rows'], 0);
-    const trace = await session.unlessInterrupted(openFor(pkg, args.trace, { skipBadRows, clock: args.clock }));
+    const trace = await session.unlessInterrupted(openFor(pkg, args.trace, args));
 
     // the files asked for are opened before anything is computed, so that a bad place costs no waiting
     const untilPs = parseUntil(args.until);
