@@ -68,6 +68,22 @@ export class Histogram {
     this.max = Math.max(this.max, other.max);
   }
 
+  /**
+   * The counts in wider buckets, COARSE_PER_OCTAVE to every power of two: bucket i holds the values in
+   * [coarseEdge(i), coarseEdge(i + 1)). Cut after the last one that holds any.
+   */
+  coarse(): number[] {
+    this.spill();
+    const counts: number[] = [];
+    for (let bucket = 0; bucket < BUCKETS; bucket++) {
+      if (this.counts[bucket] === 0) continue;
+      const to = bucket === 0 ? 0 : 1 + Math.floor((bucket - 1) / PER_COARSE);
+      while (counts.length <= to) counts.push(0);
+      counts[to] += this.counts[bucket];
+    }
+    return counts;
+  }
+
   /** Mean of the values; 0 while empty. */
   get mean(): number {
     return this.count === 0 ? 0 : this.sum / this.count;
@@ -87,6 +103,15 @@ export class Histogram {
     while (bucket < LAST && seen + this.counts[bucket] < rank) seen += this.counts[bucket++];
     return Math.min(this.max, Math.max(this.min, upperEnd(bucket)));
   }
+}
+
+/** Buckets of coarse() a power of two. */
+const COARSE_PER_OCTAVE = 8;
+const PER_COARSE = (1 << SUB_BITS) / COARSE_PER_OCTAVE;
+
+/** Lower edge of bucket `i` of coarse(): 0, 1, 1.125, 1.25 … 2, 2.25 … */
+export function coarseEdge(i: number): number {
+  return i === 0 ? 0 : edgeOf((i - 1) * PER_COARSE);
 }
 
 /** Largest whole number in a bucket, or its upper edge when it holds none. Bucket b covers [edge(b - 1), edge(b)). */

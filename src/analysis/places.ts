@@ -1,6 +1,7 @@
 import type { Package } from '../config/package.js';
-import { type Recording, STACK_CLASSES } from '../engine/recording.js';
-import type { BandwidthStack, Result } from './result-schema.js';
+import type { Recording } from '../engine/recording.js';
+import type { Result } from './result-schema.js';
+import { stackOfRows } from './stacks.js';
 import { sum } from './sums.js';
 
 /** A pseudo-channel's place: p = (stack x channels + channel) x pseudo_channels + pseudo_channel. */
@@ -35,7 +36,8 @@ function grouped(places: readonly Place[], key: (place: Place) => number): Place
 type Places = Pick<Result['bandwidth'], 'stacks' | 'channels' | 'pseudo_channels'>;
 
 /** Bandwidth and row figures of each stack, channel and pseudo-channel. */
-export function bandwidthByPlace(pkg: Package, { dram, makespanPs, elapsedCk }: Recording): Places {
+export function bandwidthByPlace(pkg: Package, recording: Recording): Places {
+  const { dram, makespanPs, elapsedCk, bandwidthStack } = recording;
   const atom = pkg.memory[0].organisation.atom_bytes;
   const seconds = makespanPs / 1e12;
   const rate = (atoms: number): number => (seconds > 0 ? (atoms * atom) / seconds : 0);
@@ -52,7 +54,11 @@ export function bandwidthByPlace(pkg: Package, { dram, makespanPs, elapsedCk }: 
   const places = placesOf(pkg);
   const channelsPerStack = pkg.memory[0].organisation.channels;
   return {
-    stacks: grouped(places, ({ stack }) => stack).map((group) => ({ stack: group[0].stack, ...traffic(group) })),
+    stacks: grouped(places, ({ stack }) => stack).map((group) => ({
+      stack: group[0].stack,
+      ...traffic(group),
+      bandwidth_stack: stackOfRows(bandwidthStack, group[0].p, group[0].p + group.length),
+    })),
     channels: grouped(places, ({ stack, channel }) => stack * channelsPerStack + channel).map((group) => ({
       stack: group[0].stack,
       channel: group[0].channel,
@@ -85,14 +91,4 @@ export function queueOccupancy(pkg: Package, { dram, elapsedCk }: Recording): Re
   const places = placesOf(pkg);
   const stacks = grouped(places, ({ stack }) => stack).map((group) => ({ ...both(group), stack: group[0].stack }));
   return { ...both(places), stacks };
-}
-
-/** The bandwidth stack summed over all pseudo-channels, ck by class, and their total. */
-export function bandwidthStackOf({ bandwidthStack }: Recording): BandwidthStack {
-  const classes = STACK_CLASSES.map((name, c) => {
-    let ck = 0;
-    for (let at = c; at < bandwidthStack.length; at += STACK_CLASSES.length) ck += bandwidthStack[at];
-    return [name, ck] as const;
-  });
-  return { ...Object.fromEntries(classes), total: sum(classes.map(([, ck]) => ck)) } as BandwidthStack;
 }

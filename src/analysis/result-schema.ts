@@ -34,6 +34,8 @@ const traffic = {
   write_bytes_per_s: rate,
 };
 
+const stack = known([...STACK_CLASSES, 'total'], count);
+
 const bandwidth = z.strictObject({
   achieved_bytes_per_s: rate.describe('moved bytes (whole atoms over the DRAM data buses) over the makespan'),
   useful_bytes_per_s: rate.describe('bytes asked for and answered over the makespan'),
@@ -47,7 +49,7 @@ const bandwidth = z.strictObject({
   bound_bytes_per_s: rate.describe('the lesser of the refresh-derated peak and the link ceiling'),
   moved_bytes: bytes,
   useful_bytes: bytes,
-  stacks: z.array(z.strictObject({ stack: count, ...traffic })),
+  stacks: z.array(z.strictObject({ stack: count, ...traffic, bandwidth_stack: stack })),
   channels: z.array(z.strictObject({ stack: count, channel: count, ...traffic })),
   pseudo_channels: z.array(
     z.strictObject({
@@ -95,6 +97,7 @@ const kernel = z.strictObject({
     ),
   compute_utilization: ratio.describe('engine compute time over engines of its dies x its duration'),
   mean_read_latency_ps: ps.nullable(),
+  bandwidth_stack: stack.describe('ck of all pseudo-channels: bursts of this kernel and the gaps that ended with them'),
   estimate_ps: ps
     .nullable()
     .describe("the trace's own estimate, all launches together; null when it has none or not all are done"),
@@ -115,12 +118,25 @@ const result = z.strictObject({
   }),
   makespan_ps: ps,
   bandwidth,
-  bandwidth_stack: known([...STACK_CLASSES, 'total'], count).describe('ck, summed over all pseudo-channels'),
+  bandwidth_stack: stack.describe('ck, summed over all pseudo-channels'),
+  stack_timeline: z
+    .strictObject({ slice_ps: z.number().min(0), slice_ck: count, classes: known(STACK_CLASSES, z.array(count)) })
+    .describe('the bandwidth stack over time, ck of all pseudo-channels; slices like those of timeline'),
   read_latency: distribution,
   latency_stack: known([...STAGES.map((stage) => `${stage}_ps` as const), 'total_ps'], ps).describe(
     'means over all reads',
   ),
+  queue_wait: known([...STACK_CLASSES.map((name) => `${name}_ps` as const), 'total_ps'], ps).describe(
+    'mean time of a read from arrival in its queue to its last column command, by what it waited for; data: bursts of others',
+  ),
   delay: known(STAGES, distribution).describe('of reads'),
+  delay_counts: z
+    .strictObject({
+      from_ps: z.array(z.number().min(0)).describe('lower edges of the buckets, eight to a power of two'),
+      read_latency: z.array(count),
+      ...known(STAGES, z.array(count)).shape,
+    })
+    .describe('reads by their delay: how many in each bucket'),
   write_delay: known(STAGES, distribution).describe('of writes, until their acknowledgement'),
   queues: queues.extend({ stacks: z.array(queues.extend({ stack: count })) }),
   compute: z.strictObject({
@@ -152,6 +168,16 @@ const result = z.strictObject({
   timeline: z
     .strictObject({ slice_ps: z.number().min(0), read_bytes: z.array(bytes), write_bytes: z.array(bytes) })
     .describe('bytes over the DRAM data buses; slice i covers i x slice_ps to (i + 1) x slice_ps'),
+  banks: z
+    .strictObject({
+      per_pseudo_channel: count,
+      atoms: z.array(count).describe('column commands'),
+      activates: z.array(count),
+      row_conflicts: z.array(count),
+    })
+    .describe(
+      'counters of each bank: pseudo-channel after pseudo-channel as in bandwidth.pseudo_channels, in each by stack ID, bank group, bank',
+    ),
   checks: z.array(
     z.strictObject({ name: z.string(), ok: z.boolean(), got: z.number(), expected: z.number(), tolerance: z.number() }),
   ),

@@ -1,13 +1,14 @@
 import type { Package } from '../config/package.js';
-import { type Recording, type RunOptions, STAGES } from '../engine/recording.js';
+import { type Recording, type RunOptions, STAGES, type StageName } from '../engine/recording.js';
 import type { Trace, TraceFacts } from '../trace/batch.js';
 import { allDies, boundsOf } from './bounds.js';
 import { checksOf } from './checks.js';
 import type { Delays } from './delays.js';
-import type { Histogram } from './histogram.js';
-import { bandwidthByPlace, bandwidthStackOf, queueOccupancy } from './places.js';
+import { coarseEdge, type Histogram } from './histogram.js';
+import { bandwidthByPlace, queueOccupancy } from './places.js';
 import { type Distribution, type LatencyStack, RESULT_FORMAT, RESULT_VERSION, type Result } from './result-schema.js';
 import { kernelFacts, kernelResult } from './roofline.js';
+import { queueWait, stackOfRows, stackTimeline } from './stacks.js';
 import { standingOf } from './standing.js';
 import { sum } from './sums.js';
 import { verdict } from './verdict.js';
@@ -33,7 +34,7 @@ export function buildResult(pkg: Package, trace: Trace, origin: Origin, recordin
   const movedWrites = sum(kernels.map((kernel) => kernel.movedWriteBytes));
   const useful = sum(kernels.map((kernel) => kernel.readBytes + kernel.writeBytes));
   const bounds = boundsOf(pkg, allDies(pkg), movedReads, movedWrites);
-  const stack = bandwidthStackOf(recording);
+  const { bandwidthStack, kernelStack } = recording;
   const compute = computeOf(pkg, recording);
   const [refreshesAll, refreshesBank] = [sum(dram.refreshesAll), sum(dram.refreshesBank)];
 
@@ -56,14 +57,20 @@ export function buildResult(pkg: Package, trace: Trace, origin: Origin, recordin
       useful_bytes: useful,
       ...bandwidthByPlace(pkg, recording),
     },
-    bandwidth_stack: stack,
+    bandwidth_stack: stackOfRows(bandwidthStack, 0, dram.reads.length),
+    stack_timeline: stackTimeline(recording),
     read_latency: distribution(delays.readLatency),
     latency_stack: latencyStack(delays),
+    queue_wait: queueWait(recording, pkg.memory[0].clockPs, delays.readLatency.count),
     delay: byStage(delays.reads),
+    delay_counts: delayCounts(delays),
     write_delay: byStage(delays.writes),
     queues: queueOccupancy(pkg, recording),
     compute,
-    kernels: kernels.map((kernel, k) => kernelResult(pkg, kernel, kernelFacts(pkg, trace, k), delays.kernels[k])),
+    kernels: kernels.map((kernel, k) => {
+      const stack = stackOfRows(kernelStack, k, k + 1);
+      return kernelResult(pkg, kernel, kernelFacts(pkg, trace, k), delays.kernels[k], stack);
+    }),
     dram: {
       row_hits: sum(dram.rowHits),
       row_misses: sum(dram.rowMisses),
@@ -96,6 +103,12 @@ export function buildResult(pkg: Package, trace: Trace, origin: Origin, recordin
       slice_ps: recording.timeline.slicePs,
       read_bytes: [...recording.timeline.readBytes],
       write_bytes: [...recording.timeline.writeBytes],
+    },
+    banks: {
+      per_pseudo_channel: recording.banks.count,
+      atoms: [...recording.banks.atoms],
+      activates: [...recording.banks.activates],
+      row_conflicts: [...recording.banks.conflicts],
     },
     checks: checksOf(pkg, recording, delays),
     provenance: provenance(pkg, trace, origin),
@@ -160,4 +173,16 @@ function byStage(histograms: readonly Histogram[]): Result['delay'] {
 function latencyStack(delays: Delays): LatencyStack {
   const parts = STAGES.map((stage, i) => [`${stage}_ps`, delays.reads[i].mean] as const);
   return { ...Object.fromEntries(parts), total_ps: delays.readLatency.mean } as LatencyStack;
+}
+
+/** Reads by delay, in buckets that all columns share; they begin at the first that any column has a count in. */
+function delayCounts({ readLatency, reads }: Delays): Result['delay_counts'] {
+  const columns = [readLatency, ...reads].map((histogram) => histogram.coarse());
+  const length = Math.max(...columns.map((column) => column.length));
+  const padded = columns.map((column) => Array.from({ length }, (_, i) => column[i] ?? 0));
+  return {
+    from_ps: Array.from({ length }, (_, i) => coarseEdge(i)),
+    read_latency: padded[0],
+    ...(Object.fromEntries(STAGES.map((stage, i) => [stage, padded[i + 1]])) as Record<StageName, number[]>),
+  };
 }

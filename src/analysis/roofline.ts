@@ -3,7 +3,7 @@ import type { KernelRecord } from '../engine/recording.js';
 import type { Trace } from '../trace/batch.js';
 import { allDies, type Bounds, boundsOf } from './bounds.js';
 import type { KernelDelays } from './delays.js';
-import type { KernelResult } from './result-schema.js';
+import type { BandwidthStack, KernelResult } from './result-schema.js';
 
 /** What the trace says of a kernel beyond the engine's counters. */
 export interface KernelFacts {
@@ -88,6 +88,7 @@ export function kernelResult(
   record: KernelRecord,
   facts: KernelFacts,
   delays: KernelDelays | undefined,
+  stack: BandwidthStack,
 ): KernelResult {
   const began = record.startPs >= 0;
   const durationPs = began ? Math.max(0, record.endPs - record.startPs) : 0;
@@ -122,6 +123,7 @@ export function kernelResult(
     roofline_ratio: line.ratio,
     compute_utilization: durationPs > 0 ? record.computePs / (engines * durationPs) : 0,
     mean_read_latency_ps: delays !== undefined && delays.reads > 0 ? delays.readLatencyPs / delays.reads : null,
+    bandwidth_stack: stack,
     estimate_ps: facts.estimatePs > 0 && record.launches === facts.launches ? facts.estimatePs : null,
   };
 }

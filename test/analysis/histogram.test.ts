@@ -1,6 +1,6 @@
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
-import { Histogram } from '../../src/analysis/histogram.js';
+import { coarseEdge, Histogram } from '../../src/analysis/histogram.js';
 
 const WIDTH = 1 / 128; // most a bucket may be as wide as its values
 
@@ -97,5 +97,24 @@ describe('histogram', () => {
   test('what is no delay shows: below zero in the minimum, not a number in the sum', () => {
     expect(filled([1, -1]).min).toBe(-1);
     expect(filled([Number.NaN]).sum).toBeNaN();
+  });
+
+  test('wide buckets hold exactly the values between their edges', () => {
+    fc.assert(
+      fc.property(fc.array(delay, { minLength: 1, maxLength: 1000 }), (values) => {
+        const counts = filled(values).coarse();
+        const expected = counts.map(
+          (_, i) => values.filter((value) => value >= coarseEdge(i) && value < coarseEdge(i + 1)).length,
+        );
+        expect(counts).toEqual(expected);
+        expect(counts.reduce((a, b) => a + b, 0)).toBe(values.length);
+      }),
+      { numRuns: 50 },
+    );
+  });
+
+  test('wide buckets are eight to a power of two', () => {
+    expect([0, 1, 2, 8, 9, 10].map(coarseEdge)).toEqual([0, 1, 1.125, 1.875, 2, 2.25]);
+    expect(new Histogram().coarse()).toEqual([]);
   });
 });

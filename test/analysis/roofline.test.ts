@@ -1,6 +1,7 @@
 import { describe, expect, test } from 'vitest';
 import { boundsOf } from '../../src/analysis/index.js';
 import { kernelFacts, kernelResult, peakFlops, roofline } from '../../src/analysis/roofline.js';
+import { stackOfRows } from '../../src/analysis/stacks.js';
 import { smallPackage } from '../helpers/packages.js';
 import { kernelDone, kernelRow, traceOf } from './recording.js';
 
@@ -59,8 +60,14 @@ describe('a kernel of the trace', () => {
   test('its estimate counts for all launches, and only once all are done', () => {
     const pkg = smallPackage();
     const facts = kernelFacts(pkg, traceOf([kernelRow('k', { repeat: 3, estimatePs: 100 })]), 0);
-    expect(kernelResult(pkg, kernelDone('k', { launches: 3 }), facts, undefined).estimate_ps).toBe(300);
-    expect(kernelResult(pkg, kernelDone('k', { launches: 2 }), facts, undefined).estimate_ps).toBeNull();
+    expect(
+      kernelResult(pkg, kernelDone('k', { launches: 3 }), facts, undefined, stackOfRows(new Float64Array(0), 0, 1))
+        .estimate_ps,
+    ).toBe(300);
+    expect(
+      kernelResult(pkg, kernelDone('k', { launches: 2 }), facts, undefined, stackOfRows(new Float64Array(0), 0, 1))
+        .estimate_ps,
+    ).toBeNull();
   });
 });
 
