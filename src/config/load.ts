@@ -32,7 +32,7 @@ function loadTree(file: string, chain: readonly string[], from?: Where): Tree {
   if (chain.includes(id)) {
     throw new InputError({
       where: from ?? { file },
-      found: `extends: ${file}, which is already being extended (${[...chain, id].map((f) => f.split(/[\\/]/).pop()).join(' -> ')})`,
+      found: `${file}, which is already being extended (${[...chain, id].map((f) => f.split(/[\\/]/).pop()).join(' -> ')})`,
       expected: 'files that do not extend each other in a circle',
     });
   }

@@ -1,5 +1,5 @@
 import { InputError, type Where } from '../errors.js';
-import { parseFrequency, parseSeparation, parseTemperature, parseTime } from '../units.js';
+import { parseSeparation, parseTemperature, parseTime } from '../units.js';
 import { checkMemory } from './check.js';
 import { DEVICES } from './devices/index.js';
 import type { Controller, MemoryGroup, Organisation, Timing, TimingName } from './package.js';
@@ -7,11 +7,14 @@ import { TIMING_NAMES } from './package.js';
 import type { PackageFile } from './schema.js';
 import { toClocks } from './timing.js';
 import type { Path } from './tree.js';
-import { negative, type Place, positive, unknownName } from './values.js';
+import { clockPeriod, latency, negative, type Place, positive, unknownName } from './values.js';
 
 type MemoryFile = PackageFile['memory'][number];
 
 const OVERRIDE = 'package file';
+const MOST_CK = 2 ** 20; // longest separation: ten of them still fit the engine's clock
+const MOST_WAIT_CK = 2 ** 26; // longest age bound and page timeout, for the same reason
+const MOST_PIPELINE_CK = 2 ** 14; // answers under way in the pipeline have a place for each of its clocks
 const HOT = 85; // degrees Celsius above which refresh runs at twice the rate (JESD79-5 MR4, through a cross-standard digest)
 
 /** One memory group: the device preset, with what the package file says laid over it. */
@@ -20,7 +23,7 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
   const device = DEVICES.get(file.device);
   if (device === undefined) throw unknownName(file.device, [...DEVICES.keys()], 'a device preset', at('device'));
   const clockText = file.clock ?? device.clock.value;
-  const clockPs = 1e12 / positive(parseFrequency(clockText, at('clock')), clockText, at('clock'));
+  const clockPs = clockPeriod(clockText, at('clock'));
   const organisation = {
     stacks: file.stacks,
     ...Object.fromEntries(
@@ -32,6 +35,13 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
   } as Organisation;
 
   const temperatureC = parseTemperature(file.refresh.temperature, at('refresh', 'temperature'));
+  if (temperatureC < -55 || temperatureC > 150) {
+    throw new InputError({
+      where: at('refresh', 'temperature'),
+      found: `'${file.refresh.temperature}'`,
+      expected: 'a junction temperature from -55 C to 150 C',
+    });
+  }
   const timings = Object.fromEntries(
     TIMING_NAMES.map((name): [TimingName, Timing] => {
       const given = file.timings?.[name];
@@ -40,6 +50,9 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
       if (separation.ps < 0) throw negative(given ?? '', where);
       let ck = toClocks(separation, clockPs, name === 'tREFI' ? 'down' : 'up');
       let source = given === undefined ? device.timings[name].source : OVERRIDE;
+      if (ck > MOST_CK) {
+        throw new InputError({ where, found: `'${given}', ${ck} ck`, expected: `at most ${MOST_CK} ck` });
+      }
       if (name === 'tREFI' && temperatureC > HOT) {
         ck = Math.floor(ck / 2);
         source += `, halved above ${HOT} C`;
@@ -80,8 +93,12 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
 
 function resolveController(file: MemoryFile['controller'], clockPs: number, path: Path, place: Place): Controller {
   const at = (key: string): Where => place([...path, key]);
-  const clocks = (key: 'age_bound' | 'page_timeout' | 'pipeline'): number =>
-    Math.ceil(positive(parseTime(file[key], at(key)), file[key], at(key)) / clockPs - 1e-9);
+  const clocks = (key: 'age_bound' | 'page_timeout' | 'pipeline'): number => {
+    const ck = Math.ceil(positive(parseTime(file[key], at(key)), file[key], at(key)) / clockPs - 1e-9);
+    const most = key === 'pipeline' ? MOST_PIPELINE_CK : MOST_WAIT_CK;
+    if (ck <= most) return ck;
+    throw new InputError({ where: at(key), found: `'${file[key]}', ${ck} ck`, expected: `at most ${most} ck` });
+  };
   const drainHigh = file.drain_high ?? Math.max(1, Math.floor((file.write_queue * 3) / 4));
   const drainLow = file.drain_low ?? Math.min(Math.floor(file.write_queue / 4), drainHigh - 1);
   if (drainHigh > file.write_queue) {
@@ -110,10 +127,4 @@ function resolveController(file: MemoryFile['controller'], clockPs: number, path
     drainLow,
     pipelineCk: clocks('pipeline'),
   };
-}
-
-function latency(text: string, where: Where): number {
-  const ps = Math.round(parseTime(text, where));
-  if (ps < 0) throw negative(text, where);
-  return ps;
 }

@@ -1,12 +1,15 @@
 import { createHash } from 'node:crypto';
 import { InputError, type Where } from '../errors.js';
-import { parseBytes, parseFlopRate, parseFrequency, parseLength, parseTime, parseTransfers } from '../units.js';
+import { parseBytes, parseFlopRate, parseLength, parseTransfers } from '../units.js';
 import type { ComputeDie, Link, MemoryGroup, Package } from './package.js';
 import { resolveMap } from './resolve-map.js';
 import { resolveMemory } from './resolve-memory.js';
 import type { PackageFile } from './schema.js';
 import { locate, type Path, type Tree } from './tree.js';
-import { negative, type Place, positive, unknownName, whole } from './values.js';
+import { clockPeriod, latency, type Place, positive, unknownName, whole } from './values.js';
+
+const MOST_FLIT = 2 ** 16; // bytes, of a flit and of headers
+const MOST_LANDING = 2 ** 30;
 
 /** Turns a valid document into a Package: units to numbers, names to indices, presets filled in. */
 export function resolve(file: PackageFile, tree: Tree, fileName: string): Package {
@@ -35,7 +38,7 @@ function resolveDie(die: PackageFile['compute'][number], path: Path, place: Plac
   const at = (key: string): Where => place([...path, key]);
   return {
     name: die.name,
-    clockPs: 1e12 / positive(parseFrequency(die.clock, at('clock')), die.clock, at('clock')),
+    clockPs: clockPeriod(die.clock, at('clock')),
     engines: die.engines,
     window: die.window,
     issuePerClock: die.issue_per_clock,
@@ -123,6 +126,10 @@ function resolveLink(
   const at = (key: string): Where => place([...path, key]);
   const size = (key: 'flit' | 'flit_overhead' | 'request_header' | 'response_header' | 'ack' | 'landing'): number => {
     const bytes = whole(parseBytes(link[key], at(key)), at(key), 'bytes');
+    if (bytes > (key === 'landing' ? MOST_LANDING : MOST_FLIT)) {
+      const most = key === 'landing' ? '1 GiB' : '64 KiB';
+      throw new InputError({ where: at(key), found: `'${link[key]}'`, expected: `at most ${most}` });
+    }
     return key === 'flit_overhead' ? bytes : positive(bytes, link[key], at(key));
   };
   const transfersPerS = positive(parseTransfers(link.rate, at('rate')), link.rate, at('rate'));
@@ -135,8 +142,6 @@ function resolveLink(
       expected: 'an overhead from 0 B to less than the flit',
     });
   }
-  const latencyPs = Math.round(parseTime(link.latency, at('latency')));
-  if (latencyPs < 0) throw negative(link.latency, at('latency'));
   const rawBytesPerS = (link.lanes * transfersPerS) / 8;
   return {
     name,
@@ -150,7 +155,7 @@ function resolveLink(
     requestHeaderBytes: size('request_header'),
     responseHeaderBytes: size('response_header'),
     ackBytes: size('ack'),
-    latencyPs,
+    latencyPs: latency(link.latency, at('latency')),
     landingBytes: size('landing'),
     rawBytesPerS,
     payloadBytesPerS: (rawBytesPerS * (flitBytes - flitOverheadBytes)) / flitBytes,

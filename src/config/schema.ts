@@ -7,19 +7,20 @@ import { TIMING_NAMES } from './package.js';
  */
 
 const quantity = (text: string) => z.string().meta({ description: text });
-const count = (text: string, least = 1) => z.int().min(least).meta({ description: text });
+/** A count has an upper end because tables are sized from it: well above any device, well below what would exhaust memory. */
+const count = (text: string, most: number, least = 1) => z.int().min(least).max(most).meta({ description: text });
 
 const organisation = z
   .strictObject({
-    channels: count('channels of one stack').optional(),
-    pseudo_channels: count('pseudo-channels of one channel').optional(),
+    channels: count('channels of one stack', 256).optional(),
+    pseudo_channels: count('pseudo-channels of one channel', 8).optional(),
     sids: z.int().min(1).max(4).meta({ description: 'stack IDs (ranks) of one pseudo-channel, 1 to 4' }).optional(),
-    bank_groups: count('bank groups of one stack ID').optional(),
-    banks_per_group: count('banks of one bank group').optional(),
-    rows: count('rows of one bank').optional(),
-    columns: count('atoms of one row').optional(),
-    burst_ck: count('clocks one atom holds the data bus').optional(),
-    atom_bytes: count('access granularity, bytes').optional(),
+    bank_groups: count('bank groups of one stack ID', 32).optional(),
+    banks_per_group: count('banks of one bank group', 64).optional(),
+    rows: count('rows of one bank', 2 ** 24).optional(),
+    columns: count('atoms of one row', 4096).optional(),
+    burst_ck: count('clocks one atom holds the data bus', 64).optional(),
+    atom_bytes: count('access granularity, bytes', 4096).optional(),
   })
   .meta({ description: 'overrides of the device’s organisation' });
 
@@ -63,20 +64,23 @@ const refresh = z
 
 const controller = z
   .strictObject({
-    read_queue: count('read entries per pseudo-channel').default(64),
-    write_queue: count('write entries per pseudo-channel').default(64),
+    read_queue: count('read entries per pseudo-channel', 4096).default(64),
+    write_queue: count('write entries per pseudo-channel', 4096).default(64),
     scheduler: z
       .enum(['fcfs', 'fr-fcfs'])
       .default('fr-fcfs')
       .meta({ description: 'first come first served, or ready row hits first (Rixner et al., 2000)' }),
-    hit_cap: count('column commands a row may serve since its ACT while an older conflict waits').default(32),
+    hit_cap: count('column commands a row may serve since its ACT while an older conflict waits', 2 ** 30).default(32),
     age_bound: quantity('an entry older than this goes first: nothing starves').default('2 us'),
     page: z.enum(['open', 'closed', 'timeout']).default('open').meta({
       description: 'when rows are closed: on conflict, by auto-precharge when no hit waits, or after page_timeout',
     }),
     page_timeout: quantity('time without a hit after which a row is closed (page: timeout)').default('200 ns'),
-    drain_high: count('write entries at which draining starts; default: three quarters of write_queue').optional(),
-    drain_low: count('write entries at which draining ends; default: a quarter of write_queue', 0).optional(),
+    drain_high: count(
+      'write entries at which draining starts; default: three quarters of write_queue',
+      4096,
+    ).optional(),
+    drain_low: count('write entries at which draining ends; default: a quarter of write_queue', 4096, 0).optional(),
     pipeline: quantity('from arrival to the answer of a forwarded read or a write acknowledgement').default('5 ns'),
   })
   .prefault({})
@@ -86,7 +90,7 @@ const memory = z
   .strictObject({
     name: z.string().min(1).meta({ description: 'name that links refer to' }),
     device: z.string().meta({ description: 'device preset, for example hbm3-6.4' }),
-    stacks: count('stacks of this memory'),
+    stacks: count('stacks of this memory', 1024),
     clock: quantity('DRAM clock frequency; default: the device’s').optional(),
     organisation: organisation.optional(),
     timings: timings.optional(),
@@ -110,8 +114,8 @@ const compute = z
   .strictObject({
     name: z.string().min(1).meta({ description: 'name that links and traces refer to' }),
     clock: quantity('clock of engines and links’ sending side, for example 1.6 GHz'),
-    engines: count('independent in-order issue streams'),
-    window: count('outstanding requests per engine').default(128),
+    engines: count('independent in-order issue streams', 4096),
+    window: count('outstanding requests per engine', 65_536).default(128),
     issue_per_clock: z.int().min(1).max(16).default(1).meta({ description: 'requests an engine issues a clock' }),
     buffering: z
       .int()
@@ -133,7 +137,7 @@ const link = z
     name: z.string().min(1).meta({ description: 'name of the link; a range of stacks gets .0, .1 … behind it' }),
     from: z.string().meta({ description: 'compute die' }),
     to: z.string().meta({ description: 'stack or stacks of a memory: hbm.0 or hbm.0-2' }),
-    lanes: count('lanes of one direction'),
+    lanes: count('lanes of one direction', 65_536),
     rate: quantity('transfer rate of a lane, for example 16 GT/s'),
     flit: quantity('flit size').default('256 B'),
     flit_overhead: quantity('header and CRC of a flit').default('16 B'),
@@ -183,9 +187,9 @@ export const packageFile = z
       .string()
       .default('')
       .meta({ description: 'a sentence that reports repeat, for example that the data is invented' }),
-    compute: z.array(compute).min(1).meta({ description: 'compute dies' }),
+    compute: z.array(compute).min(1).max(64).meta({ description: 'compute dies' }),
     memory: z.array(memory).min(1).max(1).meta({ description: 'memory; one kind for now' }),
-    links: z.array(link).min(1).meta({ description: 'die-to-die links; every stack has exactly one' }),
+    links: z.array(link).min(1).max(1024).meta({ description: 'die-to-die links; every stack has exactly one' }),
     address_map: addressMap,
   })
   .meta({ title: 'penstock package file' });

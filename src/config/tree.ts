@@ -83,8 +83,9 @@ export function parseTree(text: string, file: string): Tree {
   return tree;
 }
 
-/** Lays `over` on `base`: maps are merged key by key, everything else is replaced. */
+/** Lays `over` on `base`: maps are merged key by key, lists of named things name by name, everything else is replaced. */
 export function merge(base: Tree, over: Tree): Tree {
+  if (base.kind === 'list' && over.kind === 'list') return mergeNamed(base, over);
   if (base.kind !== 'map' || over.kind !== 'map') return over;
   const entries = new Map(base.entries);
   for (const [key, entry] of over.entries) {
@@ -92,6 +93,24 @@ export function merge(base: Tree, over: Tree): Tree {
     entries.set(key, below === undefined ? entry : { key: entry.key, value: merge(below.value, entry.value) });
   }
   return { kind: 'map', where: over.where, entries };
+}
+
+/** Items of one name are merged, others follow behind; a list with an item without a name is replaced whole. */
+function mergeNamed(base: Tree & { kind: 'list' }, over: Tree & { kind: 'list' }): Tree {
+  const names = [...base.items, ...over.items].map(nameOf);
+  if (names.includes(undefined)) return over;
+  const items = [...base.items];
+  for (const item of over.items) {
+    const at = base.items.findIndex((below) => nameOf(below) === nameOf(item));
+    if (at < 0) items.push(item);
+    else items[at] = merge(items[at], item);
+  }
+  return { kind: 'list', where: over.where, items };
+}
+
+function nameOf(item: Tree): unknown {
+  const name = item.kind === 'map' ? item.entries.get('name')?.value : undefined;
+  return name?.kind === 'scalar' ? name.value : undefined;
 }
 
 /** The plain value of a tree. */

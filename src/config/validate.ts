@@ -7,7 +7,9 @@ import { locate, type Path, plain, type Tree } from './tree.js';
 export function validate(tree: Tree): PackageFile {
   const answer = packageFile.safeParse(plain(tree));
   if (answer.success) return answer.data;
-  throw explain(tree, answer.error.issues[0]);
+  // a misspelt key is the likelier cause than the one that is then missing
+  const { issues } = answer.error;
+  throw explain(tree, issues.find(({ code }) => code === 'unrecognized_keys') ?? issues[0]);
 }
 
 function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
@@ -34,7 +36,7 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
       return new InputError({
         where: locate(tree, path),
         found,
-        expected: `${issue.origin === 'array' ? 'a list of at least' : 'at least'} ${issue.minimum}`,
+        expected: `${issue.origin === 'array' ? 'a list of at least' : 'at least'} ${issue.minimum}${issue.origin === 'string' ? ' character' : ''}`,
       });
     case 'too_big':
       return new InputError({

@@ -1,4 +1,5 @@
 import { InputError, nearest, type Where } from '../errors.js';
+import { parseFrequency, parseTime } from '../units.js';
 import type { Path } from './tree.js';
 
 /** Where each value of a document stands, for the errors of everything that resolves it. */
@@ -26,4 +27,21 @@ export function negative(text: string, where: Where): InputError {
 export function whole(value: number, where: Where, unit: string): number {
   if (Number.isInteger(value)) return value;
   throw new InputError({ where, found: `${value} ${unit}`, expected: `a whole number of ${unit}` });
+}
+
+/** Period of a clock, ps: between 1 MHz and 50 GHz, beyond which no table of the engine is sized for it. */
+export function clockPeriod(text: string, where: Where): number {
+  const hertz = positive(parseFrequency(text, where), text, where);
+  if (hertz >= 1e6 && hertz <= 50e9) return 1e12 / hertz;
+  throw new InputError({ where, found: `'${text}'`, expected: 'a clock from 1 MHz to 50 GHz' });
+}
+
+const LONGEST_LATENCY_PS = 10e6;
+
+/** A fixed latency, ps, at most 10 us: what is under way in that time has to be kept. */
+export function latency(text: string, where: Where): number {
+  const ps = Math.round(parseTime(text, where));
+  if (ps < 0) throw negative(text, where);
+  if (ps <= LONGEST_LATENCY_PS) return ps;
+  throw new InputError({ where, found: `'${text}'`, expected: 'at most 10 us' });
 }

@@ -120,7 +120,7 @@ describe('bytes and fast-csv', () => {
           const fixed = await said(`${plain}\n${body}`, options);
           expect(await said(`${quoted}\n${body}`, options)).toEqual(fixed);
           if (typeof fixed === 'string') return; // a refusal names other columns below
-        // and as if the size had been a column
+          // and as if the size had been a column
           const sized = parseShape(
             { columns: 'op=Kind,address=Addr:hex,bytes=Size,time=Stamp:cycle', ops: 'read=LD|PF,write=ST', delimiter },
             where,

@@ -53,10 +53,7 @@ export const run = command({
       'the first 20 us, with every DRAM command',
     ],
     ['run access.csv.gz -p configs/wagtail.yaml --replay open', 'recorded times as arrivals'],
-    [
-      'run capture.csv -p configs/wagtail.yaml --columns address=Addr:hex,op=Kind,bytes==64 --ops read=LD,write=ST',
-      'a captured trace',
-    ],
+    ['run capture.csv -p configs/wagtail.yaml --columns-file capture.yaml', 'a captured trace of another shape'],
   ],
   main: async (args, session) => {
     // the package, with the overrides laid over it
