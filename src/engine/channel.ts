@@ -56,6 +56,9 @@ const NEWEST_OPEN = 45;
 const OCC_AT = 46; // when the queue occupancy integrals were last brought up to date
 const REF_BANK = 47; // per-bank refresh under way: the bank
 const LAST_OF = 48; // + op: time of the last column command of that kind
+const NEXT_AT = 50; // cached: time of the pseudo-channel's next event, whichever channel goes first
+const NEXT_EVENT = 51; // … and which, see runChannel
+const STALE = 52; // 1: that must be found anew
 const DUE = 64; // + unit: next refresh interval starts
 const OWED = 68; // + unit: refreshes due and not done; negative when done ahead
 const WANTED = 72; // + unit: 1 while the unit is being closed for a refresh
@@ -1273,14 +1276,77 @@ function becameIdle(pr: number, t: number): void {
 // ---- the main loop ---------------------------------------------------------------------------------------------------------
 
 /**
- * Runs one channel, event by event, until `until`. Ties of one time go in this order: arrival, refresh bookkeeping, refresh
- * command, column command, row command (the older request's), page timeout; between pseudo-channels the one that did not issue
- * last. Unless `settle`, it stops as soon as nothing is queued, so that an idle channel costs nothing; its refreshes then wait
- * for the next call. Returns whether anything is still queued.
+ * Finds the next event of a pseudo-channel with the command buses free from the floors on: 1 arrival, 2 refresh bookkeeping,
+ * 3 refresh command, 4 column command, 5 PRE, 6 ACT, 7 page timeout; of one time the lower, of PRE and ACT the older request's.
+ */
+function findNext(pr: number, now: number, columnFloor: number, rowFloor: number): void {
+  let best = FAR;
+  let event = 9;
+  const inbox = M[pr + IN_HEAD];
+  if (inbox !== 0) {
+    best = M[inbox + ARRIVED];
+    event = 1;
+  }
+  if (M[pr + TICK] < best) {
+    best = M[pr + TICK] > now ? M[pr + TICK] : now;
+    event = 2;
+  }
+  if (M[pr + REF_TIME] < best) {
+    const e = M[pr + REF_TIME] > rowFloor ? M[pr + REF_TIME] : rowFloor;
+    if (e < best) {
+      best = e;
+      event = 3;
+    }
+  }
+  if (M[pr + N + 1] > 0) {
+    if (M[pr + DIRTY + 1] === 1 || M[pr + TIME + 1] < columnFloor) chooseColumn(pr, columnFloor);
+    const e = M[pr + TIME + 1];
+    if (e < best) {
+      best = e;
+      event = 4;
+    }
+  }
+  let row = FAR;
+  let rowEvent = 5;
+  if (M[pr + N + 2] > 0) {
+    if (M[pr + DIRTY + 2] === 1 || M[pr + TIME + 2] < rowFloor) choosePrecharge(pr, rowFloor);
+    row = M[pr + TIME + 2];
+  }
+  if (M[pr + N + 3] > 0) {
+    if (M[pr + DIRTY + 3] === 1 || M[pr + TIME + 3] < rowFloor) chooseActivate(pr, rowFloor);
+    const e = M[pr + TIME + 3];
+    if (e < row || (e === row && M[pr + BEST_AGE + 3] < M[pr + BEST_AGE + 2])) {
+      row = e;
+      rowEvent = 6;
+    }
+  }
+  if (row < best) {
+    best = row;
+    event = rowEvent;
+  }
+  if (K[PAGE] === 2 && M[pr + OLDEST_OPEN] !== 0) {
+    const e = timeoutTime(pr, rowFloor);
+    if (e < best) {
+      best = e;
+      event = 7;
+    }
+  }
+  M[pr + NEXT_AT] = best;
+  M[pr + NEXT_EVENT] = event;
+  M[pr + STALE] = 0;
+}
+
+/**
+ * Runs one channel, event by event, until `until`. Of one time the event that findNext() puts first goes first; between
+ * pseudo-channels the one that did not issue a column command last. What one pseudo-channel does can move another's next event
+ * only through the command buses, so that is found anew only when a bus is no longer free in time for it. Unless `settle`, it
+ * stops as soon as nothing is queued, so that an idle channel costs nothing; its refreshes then wait for the next call. Returns
+ * whether anything is still queued.
  */
 function runChannel(channel: number, end: number, settle: boolean): boolean {
   const until = end | 0; // an integer for the compiler too, or every time in here becomes a double
   const firstP = channel * K[PCS];
+  for (let i = 0; i < K[PCS]; i++) M[PR_WORDS * (firstP + i + 1) + STALE] = 1;
   let now = channelNow[channel];
   for (;;) {
     if (queued[channel] === 0 && !settle) {
@@ -1295,66 +1361,17 @@ function runChannel(channel: number, end: number, settle: boolean): boolean {
     for (let i = 0, j = lastPc[channel]; i < K[PCS]; i++) {
       j = j + 1 >= K[PCS] ? 0 : j + 1;
       const pr = PR_WORDS * (firstP + j + 1);
-      const inbox = M[pr + IN_HEAD];
-      if (inbox !== 0) {
-        const e = M[inbox + ARRIVED];
-        if (e < best || (e === best && event > 1 && e < until)) {
-          best = e;
-          event = 1;
-          who = pr;
-        }
-      }
-      if (M[pr + TICK] <= best) {
-        const e = M[pr + TICK] > now ? M[pr + TICK] : now;
-        if (e < best || (e === best && event > 2 && e < until)) {
-          best = e;
-          event = 2;
-          who = pr;
-        }
-      }
-      if (M[pr + REF_TIME] <= best) {
-        const e = M[pr + REF_TIME] > rowFloor ? M[pr + REF_TIME] : rowFloor;
-        if (e < best || (e === best && event > 3 && e < until)) {
-          best = e;
-          event = 3;
-          who = pr;
-        }
-      }
-      if (M[pr + N + 1] > 0) {
-        if (M[pr + DIRTY + 1] === 1 || M[pr + TIME + 1] < columnFloor) chooseColumn(pr, columnFloor);
-        const e = M[pr + TIME + 1];
-        if (e < best || (e === best && event > 4 && e < until)) {
-          best = e;
-          event = 4;
-          who = pr;
-        }
-      }
-      let row = FAR;
-      let rowEvent = 5;
-      if (M[pr + N + 2] > 0) {
-        if (M[pr + DIRTY + 2] === 1 || M[pr + TIME + 2] < rowFloor) choosePrecharge(pr, rowFloor);
-        row = M[pr + TIME + 2];
-      }
-      if (M[pr + N + 3] > 0) {
-        if (M[pr + DIRTY + 3] === 1 || M[pr + TIME + 3] < rowFloor) chooseActivate(pr, rowFloor);
-        const e = M[pr + TIME + 3];
-        if (e < row || (e === row && M[pr + BEST_AGE + 3] < M[pr + BEST_AGE + 2])) {
-          row = e;
-          rowEvent = 6;
-        }
-      }
-      if (row < best || (row === best && event > 6 && row < until)) {
-        best = row;
-        event = rowEvent;
+      const was = M[pr + NEXT_EVENT];
+      if (M[pr + STALE] === 1 || (was >= 3 && M[pr + NEXT_AT] < (was === 4 ? columnFloor : rowFloor)))
+        findNext(pr, now, columnFloor, rowFloor);
+      const e = M[pr + NEXT_AT];
+      if (e > best) continue;
+      const kind = M[pr + NEXT_EVENT];
+      // PRE and ACT are of one rank
+      if (e < best || (e < until && kind < event && (kind !== 5 || event !== 6))) {
+        best = e;
+        event = kind;
         who = pr;
-      }
-      if (K[PAGE] === 2 && M[pr + OLDEST_OPEN] !== 0) {
-        const e = timeoutTime(pr, rowFloor);
-        if (e < best) {
-          best = e;
-          event = 7;
-          who = pr;
-        }
       }
     }
     if (event === 9) {
@@ -1362,6 +1379,7 @@ function runChannel(channel: number, end: number, settle: boolean): boolean {
       return queued[channel] > 0;
     }
     now = best;
+    M[who + STALE] = 1;
     if (event === 4) {
       lastPc[channel] = pseudoOf(who) - firstP;
       issueColumn(who, channel, now);
