@@ -71,6 +71,7 @@ const bandwidth = z.strictObject({
 const kernel = z.strictObject({
   name: z.string(),
   launches: count,
+  dies: z.array(z.string()).describe('compute dies it runs on'),
   requests: count,
   start_ps: ps.nullable().describe('first issue; null when it never began'),
   end_ps: ps.nullable(),

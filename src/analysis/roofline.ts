@@ -101,6 +101,7 @@ export function kernelResult(
   return {
     name: record.name,
     launches: record.launches,
+    dies: facts.dies.map((die) => pkg.dies[die].name),
     requests: record.requests,
     start_ps: began ? record.startPs : null,
     end_ps: began ? record.endPs : null,

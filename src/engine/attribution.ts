@@ -28,6 +28,8 @@ const stack = new Float64Array(MAX_PSEUDO << CLASS_BITS); // (p << CLASS_BITS) +
 const waits = new Float64Array(MAX_PSEUDO << CLASS_BITS); // (p << CLASS_BITS) + class: reads waiting x half clocks
 const byKernel = new Float64Array(MAX_KERNELS << CLASS_BITS); // (kernel << CLASS_BITS) + class: ck
 const bySlice = new Float64Array(SLICES << CLASS_BITS); // (slice << CLASS_BITS) + class: ck, all pseudo-channels
+const begins = new Float64Array(MAX_KERNELS); // clock of a kernel's first issue
+const lastKernel = new Int32Array(MAX_PSEUDO); // per pseudo-channel: of the last burst, -1 when there was none
 const SLICE = new Float64Array([FIRST_SLICE_CK, 1 / FIRST_SLICE_CK]); // length of a slice in ck, and its inverse
 let kernels = 0; // kernels charged so far
 
@@ -36,9 +38,15 @@ export function resetAttribution(pseudoChannels: number): void {
   waits.fill(0, 0, pseudoChannels << CLASS_BITS);
   byKernel.fill(0, 0, kernels << CLASS_BITS);
   bySlice.fill(0);
+  lastKernel.fill(-1, 0, pseudoChannels);
   SLICE[0] = FIRST_SLICE_CK;
   SLICE[1] = 1 / FIRST_SLICE_CK;
   kernels = 0;
+}
+
+/** The first request of a kernel is issued at clock `ck`: a data bus that idled before that did not wait for this kernel. */
+export function kernelBegins(kernel: number, ck: number): void {
+  begins[kernel] = ck;
 }
 
 /**
@@ -72,6 +80,8 @@ export function chargeColumn(
   if (kernel >= kernels) kernels = kernel + 1;
   const at = p << CLASS_BITS;
   const of = kernel << CLASS_BITS;
+  const previous = lastKernel[p];
+  lastKernel[p] = kernel;
   stack[at + kind] += burst;
   byKernel[of + kind] += burst;
   const idle = gap > 0 ? gap >> 1 : 0;
@@ -94,6 +104,14 @@ export function chargeColumn(
   const bussed = after(windowed, t, bankReady);
   const separated = after(bussed, t, groupReady);
   const separation = kind === lastKind ? COLUMN_GAP : TURNAROUND;
+  // what the bus idled before this kernel began is the time of the kernel it served before
+  if (previous !== kernel && previous >= 0) {
+    const early = Math.min(idle - served, begins[kernel] - (start - idle));
+    if (early > 0) {
+      byKernel[of + cause] -= early;
+      byKernel[(previous << CLASS_BITS) + cause] += early;
+    }
+  }
   if (whole) {
     if (served !== idle) {
       stack[at + cause] += idle - served;

@@ -2,7 +2,9 @@ import type { Link, Package } from '../config/package.js';
 import type { AddressMap } from '../model/address-map.js';
 import { FlitServer } from '../model/flit-server.js';
 import { memoryOf, type System } from '../model/system.js';
+import { MOST_KERNELS } from '../trace/access.js';
 import { READ, WRITE } from '../trace/batch.js';
+import { kernelBegins } from './attribution.js';
 import { sendToChannel } from './channel.js';
 import { edgeAtOrAfter, edgePs, nextCreditEdge, takeEdge, takePair } from './credits.js';
 import { ACKNOWLEDGEMENT, FORWARDED } from './egress.js';
@@ -58,6 +60,7 @@ export class FrontEnd {
   private readonly nextSlotPs: Float64Array; // per engine: earliest issue by the issue rate
   private readonly hot: Uint8Array; // per engine: the answer that last freed its full window had waited for a busy queue
   private readonly credits: Int32Array; // p * 2 + op
+  private readonly begun = new Uint8Array(MOST_KERNELS); // by kernel: 1 once a request of it was issued
   private readonly landing: Float64Array; // per stack: free landing bytes
   private readonly freeHandles: Int32Array;
   private freeCount: number;
@@ -271,6 +274,10 @@ export class FrontEnd {
     this.countWindow(engine, now);
     this.outstanding[engine]++;
     ints[i + at.TAG] = work.take(bytes, now);
+    if (this.begun[work.kernel] === 0) {
+      this.begun[work.kernel] = 1;
+      kernelBegins(work.kernel, Math.floor(now / (2 * this.halfPs)));
+    }
     const lane = map.p * 2 + op;
     if (this.credits[lane] > 0 && this.creditHead[lane] < 0) {
       this.credits[lane]--;

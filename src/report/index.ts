@@ -7,5 +7,6 @@
  */
 export { descriptionReport } from './describe.js';
 export { jsonReport, prettyJson } from './json.js';
+export { rooflineReport } from './roofline.js';
 export { ink, plain, type TextStyle, table, wrap } from './style.js';
 export { textReport } from './text.js';

@@ -1,6 +1,7 @@
 import type { Result } from '../../analysis/result-schema.js';
-import { STACK_CLASSES, type StackClass } from '../../engine/recording.js';
+import { STACK_CLASSES } from '../../engine/recording.js';
 import { formatBandwidth, formatPercent, formatTime } from '../../units.js';
+import { LABELS } from '../labels.js';
 import { bar, facts, type Ink } from '../style.js';
 
 /** Achieved against peak. */
@@ -36,26 +37,6 @@ export function bandwidthSection({ bandwidth, links, makespan_ps }: Result, { ch
     ),
   ].join('\n');
 }
-
-/** What the classes of the bandwidth stack are called on the page. */
-const LABELS: Readonly<Record<StackClass, string>> = {
-  read_data: 'read data',
-  write_data: 'write data',
-  refresh: 'refresh',
-  row_cycle: 'row cycle',
-  activate_window: 'activate window',
-  column_gap: 'column gap',
-  turnaround: 'turnaround',
-  command_bus: 'command bus',
-  starved_down_link: 'no work: down link',
-  starved_up_link: 'no work: up link',
-  starved_queue_credits: 'no work: queue credits',
-  starved_window: 'no work: window',
-  starved_compute: 'no work: compute',
-  starved_imbalance: 'no work: imbalance',
-  starved_arrivals: 'no work: arrivals',
-  starved_drain: 'no work: drain',
-};
 
 const CELLS = 14; // columns of a bar
 const LEAST_SHOWN = 0.001; // of all clocks: classes below this are shown as one
