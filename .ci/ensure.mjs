@@ -1,6 +1,6 @@
 // Makes a fresh clone runnable: installs what is locked and builds, each only when needed. Built-ins only.
 import { spawnSync } from 'node:child_process';
-import { existsSync, readdirSync, readFileSync, rmSync, statSync, writeFileSync } from 'node:fs';
+import { existsSync, mkdirSync, readdirSync, readFileSync, rmSync, statSync, writeFileSync } from 'node:fs';
 import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 
@@ -46,9 +46,17 @@ const sources = Math.max(
   statSync(at('tsconfig.json')).mtimeMs,
   statSync(at('package-lock.json')).mtimeMs,
 );
-if (!existsSync(at('dist', 'cli', 'main.js')) || !existsSync(stamp) || statSync(stamp).mtimeMs < sources) {
+if (
+  !existsSync(at('dist', 'cli', 'main.js')) ||
+  !existsSync(at('dist', 'report', 'html', 'client.js')) ||
+  !existsSync(stamp) ||
+  statSync(stamp).mtimeMs < sources
+) {
   rmSync(at('dist'), { recursive: true, force: true });
   const { bin } = json('node_modules', 'typescript', 'package.json');
   run(process.execPath, [at('node_modules', 'typescript', bin.tsc), '-p', at('tsconfig.json')]);
+  run(process.execPath, [at('.ci', 'bundle.mjs')]);
   writeFileSync(stamp, '');
 }
+// where `npm start` puts its HTML report
+mkdirSync(at('out'), { recursive: true });

@@ -28,6 +28,11 @@ export const KINDS = {
     begins: (head: string) =>
       head.startsWith('ck,stack,channel,pseudo_channel,sid,bank_group,bank,row,column,command,'),
   },
+  html: {
+    name: 'a penstock HTML report',
+    begins: (head: string) =>
+      head.startsWith('<!doctype html>') && head.includes('<meta name="generator" content="penstock">'),
+  },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
 } as const;
 export type Kind = keyof typeof KINDS;

@@ -6,6 +6,7 @@
  * Not modelled: nothing is computed here but ratios of two figures of the document.
  */
 export { descriptionReport } from './describe.js';
+export { htmlReport } from './html/index.js';
 export { jsonReport, prettyJson } from './json.js';
 export { rooflineReport } from './roofline.js';
 export { ink, plain, type TextStyle, table, wrap } from './style.js';

@@ -1,4 +1,5 @@
 import type { LossName } from '../analysis/index.js';
+import type { StageName } from '../engine/recording.js';
 
 /** What the classes of the bandwidth stack, and other losses, are called on the page. */
 export const LABELS: Readonly<Record<LossName, string>> = {
@@ -21,3 +22,8 @@ export const LABELS: Readonly<Record<LossName, string>> = {
   other_kernels: 'other kernels',
   refresh_put_off: 'refresh put off',
 };
+
+/** What the stages of a request's life are called on the page. */
+export function stageLabel(stage: StageName): string {
+  return stage.replaceAll('_', ' ');
+}

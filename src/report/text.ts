@@ -1,12 +1,9 @@
 import type { Result } from '../analysis/result-schema.js';
+import { CAUTION } from './caution.js';
 import { bandwidthSection, stackSection } from './sections/bandwidth.js';
 import { computeSection, kernelSection } from './sections/kernels.js';
 import { latencySection } from './sections/latency.js';
 import { facts, type Ink, ink, plain, type TextStyle, wrap } from './style.js';
-
-const CAUTION =
-  'Figures are estimates for planning: sign-off needs the device vendor’s data and the standard itself, and power and ' +
-  'thermal limits follow the vendor’s and local rules.';
 
 /** The report an engineer reads in a terminal: what binds first, then what was achieved, where the rest went, who waited. */
 export function textReport(result: Result, style: TextStyle): string {

@@ -10,6 +10,7 @@ import { jsonReport, textReport } from '../../report/index.js';
 import { command, PACKAGE, SET } from '../command.js';
 import { CommandLog } from '../command-log.js';
 import { CHECKS_FAILED } from '../failure.js';
+import { htmlPage } from '../html.js';
 import { OutputFile } from '../output.js';
 import { ProgressBar } from '../progress.js';
 import { parseUntil } from '../quantities.js';
@@ -39,11 +40,13 @@ export const run = command({
       requiresArg: true,
       describe: 'write the result document; - writes it to standard output, in place of the report',
     },
+    html: { type: 'string', requiresArg: true, describe: 'write the report as one HTML page that works offline' },
     'command-log': { type: 'string', requiresArg: true, describe: 'write every DRAM command (.csv, .csv.gz)' },
   },
   examples: [
     ['run traces/wagtail-step.csv -p configs/wagtail.yaml', 'the demo'],
     ['run traces/wagtail-step.csv -p configs/wagtail.yaml --json step.json', 'the same, with every figure kept'],
+    ['run traces/wagtail-step.csv -p configs/wagtail.yaml --html step.html', 'with charts, to open in a browser'],
     [
       'run traces/wagtail-step.csv -p configs/wagtail.yaml --set memory.0.controller.page=closed',
       'one key of the package changed',
@@ -65,6 +68,7 @@ export const run = command({
     // the files asked for are opened before anything is computed, so that a bad place costs no waiting
     const untilPs = parseUntil(args.until);
     const jsonFile = args.json === undefined || args.json === '-' ? null : new OutputFile(args.json, 'result');
+    const htmlFile = args.html === undefined ? null : new OutputFile(args.html, 'html');
     const log = args['command-log'] === undefined ? null : new CommandLog(args['command-log'], pkg);
     const progress = ProgressBar.on(process.stderr, { bytes: usefulBytes(trace), untilPs }, process.env);
 
@@ -86,9 +90,12 @@ export const run = command({
     const result = buildResult(pkg, trace, { version: VERSION, options, overrides: args.set }, recording, delays);
     const document = args.json === undefined ? '' : jsonReport(result);
     jsonFile?.write(document);
+    htmlFile?.write(htmlPage(result));
     log?.finish();
     jsonFile?.commit();
+    htmlFile?.commit();
     await session.print(args.json === '-' ? document : textReport(result, session));
+    if (args.html !== undefined && args.json !== '-') await session.print(`HTML report: ${args.html}\n`);
     const failed = result.checks.filter((check) => !check.ok);
     if (failed.length === 0) return;
     session.warn(`penstock: the result must not be used: ${failed.map(({ name }) => name).join(', ')} failed`);

@@ -1,6 +1,7 @@
 import type { Distribution, Result } from '../../analysis/result-schema.js';
 import { STAGES } from '../../engine/recording.js';
 import { formatCount, formatPercent, formatTime } from '../../units.js';
+import { stageLabel } from '../labels.js';
 import { facts, type Ink, table } from '../style.js';
 
 /** Read latency with the delay of every stage: the means add up to the mean latency. */
@@ -19,7 +20,7 @@ export function latencySection(
     ];
     const rows = STAGES.map((stage) =>
       row(
-        stage.replaceAll('_', ' '),
+        stageLabel(stage),
         delay[stage],
         latency.mean_ps > 0 ? formatPercent(delay[stage].mean_ps / latency.mean_ps) : '',
       ),

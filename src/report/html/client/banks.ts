@@ -1,0 +1,73 @@
+import { formatBytes, formatCount } from '../../../units.js';
+import type { PageData } from '../data.js';
+import { axis, base, type Plot, tip, tooltip } from './base.js';
+
+/** Every bank as a cell: pseudo-channels from top to bottom, banks from left to right. */
+export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metric: () => string): Plot {
+  return {
+    height: () => Math.max(220, Math.min(900, 84 + 3 * rows.length)),
+    option: (ink) => {
+      const { key, label, values } = metrics.find(({ key }) => key === metric()) ?? metrics[0];
+      const show = key === 'bytes' ? formatBytes : formatCount;
+      const most = values.reduce((top, value) => Math.max(top, value), 0);
+      const stackOf = (row: string): string => row.split('.')[0];
+      return {
+        ...base(ink),
+        grid: { left: 74, right: 96, top: 6, bottom: 40 },
+        xAxis: axis(ink, {
+          type: 'category',
+          data: [...columns],
+          name: 'bank',
+          nameLocation: 'middle',
+          nameGap: 26,
+          splitLine: { show: false },
+          axisTick: { show: false },
+        }),
+        yAxis: axis(ink, {
+          type: 'category',
+          inverse: true,
+          data: [...rows],
+          splitLine: { show: false },
+          axisTick: { show: false },
+          axisLabel: {
+            color: ink.soft,
+            interval: (i: number) => i === 0 || stackOf(rows[i]) !== stackOf(rows[i - 1]),
+            formatter: (row: string) => `stack ${stackOf(row)}`,
+          },
+        }),
+        visualMap: {
+          type: 'continuous',
+          min: 0,
+          max: Math.max(1, most),
+          calculable: false,
+          right: 4,
+          top: 'middle',
+          itemHeight: 140,
+          itemWidth: 12,
+          formatter: (value: number) => show(value),
+          text: [show(most), '0'],
+          textStyle: { color: ink.soft },
+          inRange: { color: [ink.room, ink.of('starved_up_link'), ink.of('starved_window'), ink.of('row_cycle')] },
+        },
+        tooltip: {
+          ...tooltip(ink, (params: { value: number[] }) => {
+            const [bank, row, value] = params.value;
+            const [stack, channel, pseudo] = rows[row].split('.');
+            return tip(`stack ${stack}, channel ${channel}, pseudo-channel ${pseudo}, bank ${columns[bank]}`, [
+              [label, show(value)],
+            ]);
+          }),
+        },
+        series: [
+          {
+            type: 'heatmap',
+            name: label,
+            progressive: 0,
+            emphasis: { itemStyle: { borderColor: ink.ink, borderWidth: 1 } },
+            data: values.map((value, i) => [i % columns.length, Math.floor(i / columns.length), value]),
+          },
+        ],
+      };
+    },
+  };
+}
