@@ -8,18 +8,18 @@ const PLACES = [
   '/Applications/Google Chrome.app/Contents/MacOS/Google Chrome',
 ];
 
-/** The browser named by PENSTOCK_CHROMIUM, else the first known one on the path. Throws when there is none. */
+/** The browser named by CHROMIUM, else the first known one on the path. Throws when there is none. */
 function executable(): string {
-  const { PENSTOCK_CHROMIUM: named, PATH = '' } = process.env;
+  const { CHROMIUM: named, PATH = '' } = process.env;
   if (named !== undefined) {
     if (existsSync(named)) return named;
-    throw new Error(`PENSTOCK_CHROMIUM names ${named}, and there is no such file`);
+    throw new Error(`CHROMIUM names ${named}, and there is no such file`);
   }
   const places = [...PATH.split(delimiter).flatMap((folder) => NAMES.map((name) => join(folder, name))), ...PLACES];
   const found = places.find((place) => existsSync(place));
   if (found !== undefined) return found;
   throw new Error(
-    `no Chromium found: looked for ${NAMES.join(', ')} on the path. Install it (Debian: apt-get install chromium) or name one in PENSTOCK_CHROMIUM`,
+    `no Chromium found: looked for ${NAMES.join(', ')} on the path. Install it (Debian: apt-get install chromium) or name one in CHROMIUM`,
   );
 }
 
