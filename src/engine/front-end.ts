@@ -354,7 +354,7 @@ export class FrontEnd {
     let longest = doubles[d + at.GATE_OR_UP_START];
     let cause = ints[i + at.FLAGS] >> 8;
     const windowWait = issue - doubles[d + at.READY];
-    if (windowWait >= longest) {
+    if (windowWait > longest) {
       longest = windowWait;
       cause = this.hot[ints[i + at.ENGINE]] === 1 ? FOR_IMBALANCE : FOR_WINDOW;
     }
