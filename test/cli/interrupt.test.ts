@@ -63,6 +63,7 @@ describe('a trace that is long in coming', () => {
     child.stdout.on('data', (text) => {
       out += text;
     });
+    child.stdin.on('error', () => {}); // the program does not read on
     child.stdin.write(`op,address,bytes\n${'R,0,64\n'.repeat(200_000)}`); // and stays open
     setTimeout(() => child.kill('SIGINT'), 2 * AFTER_MS);
     const code = await new Promise((resolve) => child.on('close', resolve));

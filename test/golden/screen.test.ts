@@ -2,6 +2,7 @@ import { execFileSync } from 'node:child_process';
 import { readFileSync, writeFileSync } from 'node:fs';
 import { fileURLToPath } from 'node:url';
 import { expect, it } from 'vitest';
+import { build } from '../cli/penstock.js';
 
 const ROOT = fileURLToPath(new URL('../../', import.meta.url));
 const README = `${ROOT}README.md`;
@@ -12,7 +13,8 @@ const [BEGIN, END] = ['<!-- screen:begin (npm start) -->\n```text\n', '\n```\n<!
  *
  *     UPDATE_SCREEN=1 npx vitest run test/golden
  */
-it('README shows what the demo prints', () => {
+it('README shows what the demo prints', async () => {
+  await build();
   const args = ['dist/cli/main.js', 'run', 'traces/wagtail-step.csv', '--package', 'configs/wagtail.yaml'];
   const env = { ...process.env, NO_COLOR: '1' };
   const printed = execFileSync(process.execPath, args, { cwd: ROOT, encoding: 'utf8', env }).trimEnd();
