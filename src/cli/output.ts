@@ -18,6 +18,7 @@ import {
 import { basename, dirname, join, resolve } from 'node:path';
 import { constants, gunzipSync, gzipSync } from 'node:zlib';
 import { InputError, SystemError } from '../errors.js';
+import { TABLE_NAMES, tableHead } from '../report/index.js';
 import { systemError } from './system-error.js';
 
 /** What each kind of output is called, and how a file that holds it begins. */
@@ -33,6 +34,10 @@ export const KINDS = {
     begins: (head: string) =>
       head.startsWith('<!doctype html>') && head.includes('<meta name="generator" content="penstock">'),
   },
+  table: {
+    name: 'a penstock table',
+    begins: (head: string) => TABLE_NAMES.some((name) => head.startsWith(`${tableHead(name)}\n`)),
+  },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
 } as const;
 export type Kind = keyof typeof KINDS;
@@ -42,9 +47,30 @@ const GZIP_LEVEL = 4; // near the knee of size against time on command logs; com
 
 const unfinished = new Set<OutputFile>();
 
+const cleanups = new Set<() => void>();
+
 /** Removes the temporary files of outputs that are still being written; for the way out after a failure or an interrupt. */
 export function discardUnfinished(): void {
   for (const output of unfinished) output.discard();
+  for (const clean of cleanups) {
+    try {
+      clean();
+    } catch {
+      // the way out must not fail over a leftover
+    }
+  }
+  cleanups.clear();
+}
+
+/** Has `discardUnfinished` call `clean` too, unless the function returned was called before. */
+export function atTheEnd(clean: () => void): () => void {
+  cleanups.add(clean);
+  return () => void cleanups.delete(clean);
+}
+
+/** A name of its own beside `name`: no two programs share it, and no leftover of one that was killed. */
+export function temporaryName(name: string): string {
+  return `.${name}.${process.pid}-${Date.now().toString(36)}.tmp`;
 }
 
 /** One output file. A name that ends in .gz is compressed, one gzip member for each piece written (RFC 1952, section 2.2). */
@@ -67,8 +93,7 @@ export class OutputFile {
     const special = there !== undefined && !there.isFile();
     this.target = there === undefined ? file : attempt(file, () => realpathSync(file));
     if (!special) refuseTwice(file, this.target);
-    const mark = `${process.pid}-${Date.now().toString(36)}`; // no two programs, and no leftover of one that was killed
-    this.temporary = special ? null : join(dirname(this.target), `.${basename(this.target)}.${mark}.tmp`);
+    this.temporary = special ? null : join(dirname(this.target), temporaryName(basename(this.target)));
     this.fd = attempt(file, () => openSync(this.temporary ?? this.target, special ? 'w' : 'wx', 0o666));
     unfinished.add(this);
     // a replaced file keeps its permissions, where the file system has them

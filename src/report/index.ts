@@ -5,6 +5,7 @@
  * Its one decision: a reporter is a pure function of the document and a style, so what is printed can always be had again.
  * Not modelled: nothing is computed here but ratios of two figures of the document.
  */
+export { csvTable, TABLE_NAMES, type TableName, tableHead } from './csv.js';
 export { descriptionReport } from './describe.js';
 export { htmlReport } from './html/index.js';
 export { jsonReport, prettyJson } from './json.js';

@@ -15,6 +15,7 @@ import { OutputFile } from '../output.js';
 import { ProgressBar } from '../progress.js';
 import { parseUntil } from '../quantities.js';
 import { SHAPE } from '../shape.js';
+import { TableFolder } from '../tables.js';
 import { openFor, usefulBytes } from '../trace.js';
 
 export const run = command({
@@ -41,6 +42,11 @@ export const run = command({
       describe: 'write the result document; - writes it to standard output, in place of the report',
     },
     html: { type: 'string', requiresArg: true, describe: 'write the report as one HTML page that works offline' },
+    csv: {
+      type: 'string',
+      requiresArg: true,
+      describe: 'write the tables as CSV into this folder: kernels, bandwidth stack, delays, banks and more',
+    },
     'command-log': { type: 'string', requiresArg: true, describe: 'write every DRAM command (.csv, .csv.gz)' },
   },
   examples: [
@@ -69,6 +75,7 @@ export const run = command({
     const untilPs = parseUntil(args.until);
     const jsonFile = args.json === undefined || args.json === '-' ? null : new OutputFile(args.json, 'result');
     const htmlFile = args.html === undefined ? null : new OutputFile(args.html, 'html');
+    const tables = args.csv === undefined ? null : new TableFolder(args.csv);
     const log = args['command-log'] === undefined ? null : new CommandLog(args['command-log'], pkg);
     const progress = ProgressBar.on(process.stderr, { bytes: usefulBytes(trace), untilPs }, process.env);
 
@@ -91,9 +98,11 @@ export const run = command({
     const document = args.json === undefined ? '' : jsonReport(result);
     jsonFile?.write(document);
     htmlFile?.write(htmlPage(result));
+    tables?.write(result);
     log?.finish();
     jsonFile?.commit();
     htmlFile?.commit();
+    tables?.commit();
     await session.print(args.json === '-' ? document : textReport(result, session));
     if (args.html !== undefined && args.json !== '-') await session.print(`HTML report: ${args.html}\n`);
     const failed = result.checks.filter((check) => !check.ok);
