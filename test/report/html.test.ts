@@ -1,10 +1,14 @@
 import { createHash } from 'node:crypto';
 import { describe, expect, test } from 'vitest';
-import { buildResult, type Result } from '../../src/analysis/index.js';
+import { buildResult, type Result, standings } from '../../src/analysis/index.js';
 import { STACK_CLASSES } from '../../src/engine/recording.js';
 import { pageData } from '../../src/report/html/data.js';
 import { html, scriptJson } from '../../src/report/html/markup.js';
+import { together } from '../../src/report/html/sections/figure.js';
+import { lossTable } from '../../src/report/html/sections/losses.js';
 import { htmlReport } from '../../src/report/index.js';
+import { LABELS } from '../../src/report/labels.js';
+import { formatTime } from '../../src/units.js';
 import { made } from '../analysis/recording.js';
 
 const ORIGIN = {
@@ -102,6 +106,23 @@ describe('page', () => {
     expect(page).toContain('There were no reads.');
     expect(page).not.toMatch(/NaN|Infinity|undefined/);
   });
+});
+
+test('no line breaks between a number and its unit; other blanks stay', () => {
+  expect(together('4 reads took 1.21 us, 40 % of 3 TB/s in 2 stacks, 64 B')).toBe(
+    '4 reads took 1.21\u00a0us, 40\u00a0% of 3\u00a0TB/s in 2 stacks, 64\u00a0B',
+  );
+});
+
+test('the losses of each kernel stand in the page, with the judgement of its estimate', () => {
+  const result = sample();
+  const text = lossTable(result).text.replaceAll(/<[^>]+>/g, '|');
+  const [gather] = standings(result, 0.1);
+  expect(gather.verdict).toBe('too hopeful'); // 800 ns against an estimate of 500 ns
+  expect(text).toContain('|gather||800.0 ns|');
+  expect(text).toContain('|1.60||too hopeful|');
+  for (const { name, ps } of gather.losses.slice(0, 1))
+    expect(text.replaceAll('\u00a0', ' ')).toContain(`${LABELS[name]} ${formatTime(ps)}`);
 });
 
 describe('what the charts draw', () => {

@@ -9,11 +9,15 @@ export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metri
     option: (ink) => {
       const { key, label, values } = metrics.find(({ key }) => key === metric()) ?? metrics[0];
       const show = key === 'bytes' ? formatBytes : formatCount;
-      const most = values.reduce((top, value) => Math.max(top, value), 0);
+      // a few banks far above the rest must not leave the rest one colour: from three times the mean on all have the last one
+      const used = values.filter((value) => value > 0);
+      const most = used.reduce((high, value) => Math.max(high, value), 0);
+      const mean = used.reduce((sum, value) => sum + value, 0) / Math.max(1, used.length);
+      const top = Math.min(most, Number((3 * mean).toPrecision(2)));
       const stackOf = (row: string): string => row.split('.')[0];
       return {
         ...base(ink),
-        grid: { left: 74, right: 96, top: 6, bottom: 40 },
+        grid: { left: 74, right: 116, top: 6, bottom: 40 },
         xAxis: axis(ink, {
           type: 'category',
           data: [...columns],
@@ -38,15 +42,16 @@ export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metri
         visualMap: {
           type: 'continuous',
           min: 0,
-          max: Math.max(1, most),
+          max: Math.max(1, top),
           calculable: false,
           right: 4,
           top: 'middle',
           itemHeight: 140,
           itemWidth: 12,
           formatter: (value: number) => show(value),
-          text: [show(most), '0'],
+          text: [top < most ? `over ${show(top)}` : show(top), '0'],
           textStyle: { color: ink.soft },
+          outOfRange: { color: [ink.of('row_cycle')] },
           inRange: { color: [ink.room, ink.of('starved_up_link'), ink.of('starved_window'), ink.of('row_cycle')] },
         },
         tooltip: {

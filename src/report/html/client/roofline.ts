@@ -30,8 +30,11 @@ export function rooflinePlot({ roofline: { points, slopes, roofs } }: PageData):
     }));
     boxes.sort((a, b) => a.y - b.y);
     const out = boxes.map(() => 0);
+    const lines = roofs.map(({ flopsPerS }) => along * Math.log10(maxY / flopsPerS));
     boxes.forEach((box, i) => {
-      let y = box.y;
+      // a name does not lie on a roof either
+      const on = lines.find((line) => Math.abs(box.y - line) < LINE / 2);
+      let y = on === undefined ? box.y : on + LINE * 0.8;
       for (const other of boxes.slice(0, i)) {
         const apart = box.left > other.left + other.width || other.left > box.left + box.width;
         const taken = other.y + out[other.at];

@@ -15,8 +15,15 @@ export function section({ id, title, reading, chart, controls, body }: Figure): 
     chart === undefined
       ? ''
       : html`<div class="plot ${chart.size ?? 'mid'}" data-chart="${chart.key}" role="img" aria-label="${chart.label}"></div>`;
-  return html`<section id="${id}" aria-labelledby="${id}-h"><h2 id="${id}-h">${title}</h2><p class="reading">${reading}</p>${controls ?? ''}${plot}${body ?? ''}</section>
+  return html`<section id="${id}" aria-labelledby="${id}-h"><h2 id="${id}-h">${title}</h2><p class="reading">${together(reading)}</p>${controls ?? ''}${plot}${body ?? ''}</section>
 `;
+}
+
+/** Text in which no line breaks between a number and its unit. */
+export function together(text: Piece): Piece {
+  if (typeof text === 'string')
+    return text.replaceAll(/(\d) (?=(?:%|[pnum]?s|[kMGTP]?(?:B|FLOP)\/s|[KMGT]?i?B)(?![\w]))/g, '$1\u00a0');
+  return Array.isArray(text) ? text.map(together) : text;
 }
 
 /** Room for a chart's legend; the page's program fills it with a button a series. */

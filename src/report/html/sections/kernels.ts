@@ -5,14 +5,13 @@ import { html, type Markup } from '../markup.js';
 import type { RooflineData } from '../roofline-data.js';
 import { type Cell, type Column, cell, folded, table } from '../table.js';
 import { section } from './figure.js';
+import { lossTable } from './losses.js';
 
 const MOST = 2000; // kernels in the table
 
 /** Kernels under the ceilings of the package, and how much of its bound each reached. */
-export function rooflineSection(
-  { kernels, bandwidth }: Result,
-  { points, roofs, slopes, reached }: RooflineData,
-): Markup {
+export function rooflineSection(result: Result, { points, roofs, slopes, reached }: RooflineData): Markup {
+  const { kernels, bandwidth } = result;
   const without = kernels.filter(({ flops }) => flops === 0).length;
   const reading = [
     points.length > 0
@@ -69,7 +68,7 @@ export function rooflineSection(
       label: 'Roofline plot: kernels under the ceilings; the tables below have the figures',
     },
     body: html`${folded('The plot as tables', html`${places}${ceilings}`)}
-<h3>Share of its bound each kernel reached</h3><div class="plot rows" data-chart="reached" role="img" aria-label="Share of its bound each kernel reached, and what its estimate meant; the table below has the figures"></div>${folded('Shares of the bounds as a table', ratios)}`,
+<h3>Share of its bound each kernel reached</h3><div class="plot rows" data-chart="reached" role="img" aria-label="Share of its bound each kernel reached, and what its estimate meant; the table below has the figures"></div>${folded('Shares of the bounds as a table', ratios)}${lossTable(result)}`,
   });
 }
 

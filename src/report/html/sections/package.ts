@@ -75,7 +75,7 @@ export function packageSection({ package: pkg, links: used }: Result): Markup {
 }
 
 function heading(head: string, i: number): { readonly head: string; readonly text?: true } {
-  return i < 2 || head === 'peak' ? { head, text: true } : { head };
+  return i === 0 || head === 'joins' || head === 'peak' ? { head, text: true } : { head };
 }
 
 function addressMap({ addressMap: map }: Package): string {

@@ -1,6 +1,7 @@
 import type { Result } from '../../../analysis/result-schema.js';
 import { formatBandwidth, formatCount, formatPercent, formatTime } from '../../../units.js';
 import { html, type Markup, type Piece } from '../markup.js';
+import { together } from './figure.js';
 
 /** The head of the page: what was run, and the verdict in one sentence. */
 export function head(result: Result): Markup {
@@ -8,7 +9,7 @@ export function head(result: Result): Markup {
   const failed = checks.filter((check) => !check.ok).length;
   return html`<header>
 <p class="what">${pkg.name} · ${provenance.trace_file}</p>
-<h1>${verdict.sentence}</h1>
+<h1>${together(verdict.sentence)}</h1>
 ${failed > 0 && html`<p class="alarm" role="alert">${failed} of ${checks.length} self checks failed: this result must not be used.</p>`}
 ${partial && html`<p class="alarm">Partial: the run was stopped before the trace ended; requests under way are not counted.</p>`}
 ${pkg.caution !== '' && html`<p class="caution">${pkg.caution}</p>`}
@@ -52,7 +53,7 @@ export function headline(result: Result): Markup {
     figure(
       'Read queue',
       `${queues.read.mean_entries.toFixed(1)} entries`,
-      html`a pseudo-channel, mean; deepest ${queues.read.max_entries}; write queue ${queues.write.mean_entries.toFixed(1)}`,
+      html`mean of a pseudo-channel, deepest ${queues.read.max_entries}; writes ${queues.write.mean_entries.toFixed(1)}`,
     ),
   ];
   return html`<section id="figures" aria-labelledby="figures-h"><h2 id="figures-h" class="hidden">Headline figures</h2><dl class="tiles">${figures}</dl></section>
