@@ -5,17 +5,17 @@ import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import { build, Folder, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 let folder: Folder;
-let chase: string; // takes some ten seconds to run to its end
+let chase: string; // takes well over ten seconds to run to its end
 
 beforeAll(async () => {
   folder = new Folder();
   chase = folder.at('chase.csv.gz');
   await build();
-  expect((await penstock(['synth', 'chase', '--bytes', '64MiB', '--out', chase])).code).toBe(0);
+  expect((await penstock(['synth', 'chase', '--bytes', '128MiB', '--out', chase])).code).toBe(0);
 }, 120_000);
 afterAll(() => folder.remove());
 
-const AFTER_MS = 1500; // long enough to be in the middle of the run
+const AFTER_MS = 2500; // long enough to be in the middle of the run, on a busy machine too
 
 describe('an interrupt', () => {
   for (const signal of ['SIGINT', 'SIGTERM'] as const) {
@@ -29,7 +29,7 @@ describe('an interrupt', () => {
       const result = JSON.parse(readFileSync(json, 'utf8'));
       expect(result.partial).toBe(true);
       expect(result.bandwidth.useful_bytes).toBeGreaterThan(0);
-      expect(result.bandwidth.useful_bytes).toBeLessThan(64 * 1024 * 1024);
+      expect(result.bandwidth.useful_bytes).toBeLessThan(128 * 1024 * 1024);
       expect(readFileSync(log, 'utf8').endsWith('\n')).toBe(true);
     });
   }
