@@ -39,6 +39,8 @@ export const KINDS = {
     begins: (head: string) => TABLE_NAMES.some((name) => head.startsWith(`${tableHead(name)}\n`)),
   },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
+  parquet: { name: 'a Parquet file', begins: (head: string) => head.startsWith('PAR1') },
+  arrow: { name: 'an Arrow IPC file', begins: (head: string) => head.startsWith('ARROW1') },
 } as const;
 export type Kind = keyof typeof KINDS;
 

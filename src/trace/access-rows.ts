@@ -72,7 +72,7 @@ export async function* readPlain(
       ended = true;
     } else break;
   }
-  yield* finish(reading);
+  yield* finishReading(reading);
 
   function takeOdd(bytes: Buffer, number: number): void {
     for (const { text, lines, fault, fatal } of new Splitter(file, delimiter, number).push(bytes, false)) {
@@ -112,10 +112,11 @@ export async function* readBlocks(
     if (fault !== null && fatal) throw fault;
     if (fault !== null) tolerance.skip(fault);
   }
-  yield* finish(reading);
+  yield* finishReading(reading);
 }
 
-function* finish(reading: Reading): Generator<AccessBatch> {
+/** Ends the reading: the rows left, or the error that there were none. */
+export function* finishReading(reading: Reading): Generator<AccessBatch> {
   const { file, access, tolerance, facts, hash } = reading;
   handOut(reading);
   facts.hash = hash.digest('hex');
@@ -124,7 +125,8 @@ function* finish(reading: Reading): Generator<AccessBatch> {
   access.batch.count = 0;
 }
 
-function handOut({ access, facts, tolerance }: Reading): void {
+/** Counts the batch before it is handed out. */
+export function handOut({ access, facts, tolerance }: Reading): void {
   facts.rows += access.batch.count;
   facts.skippedRows = tolerance.skipped;
 }

@@ -19,3 +19,4 @@ export { type ShapeFile, shapeFile } from './shape-file.js';
 export { type SynthOptions, synthesise } from './synth.js';
 export { createTileWalk } from './walk.js';
 export { accessCsv } from './write.js';
+export { arrowBytes, parquetBytes } from './write-columns.js';

@@ -8,10 +8,13 @@ import { stat } from 'node:fs/promises';
 import { InputError } from '../errors.js';
 import { AccessRows } from './access.js';
 import { joined, type Reading, readBlocks, readPlain } from './access-rows.js';
+import { openArrow } from './arrow.js';
 import type { AccessBatch, AccessTrace, DieGeometry, Trace } from './batch.js';
 import { CHUNK, decode, hashed, unreadable } from './bytes.js';
+import { readColumns } from './column-rows.js';
 import { type Header, readHeader } from './header.js';
 import { readKernels } from './kernels.js';
+import { type ColumnFile, openParquet } from './parquet.js';
 import { LONGEST_RECORD } from './records.js';
 import { type RowBlock, readRows } from './rows.js';
 import { OWN_SHAPE, type Shape } from './shape.js';
@@ -42,7 +45,17 @@ export interface TraceOptions {
  */
 export async function openTrace(file: string, options: TraceOptions = {}): Promise<Trace> {
   const hash = createHash('sha256');
-  const expected = 'a trace file, .csv or .csv.gz';
+  const expected = 'a trace file, .csv, .csv.gz, .parquet or .arrow';
+  const openColumns = /\.(parquet|arrow|feather)$/i.exec(file)?.[1].toLowerCase();
+  if (openColumns !== undefined) {
+    await mustBeFile(file, expected);
+    return openColumnFile(
+      file,
+      openColumns === 'parquet' ? await openParquet(file) : await openArrow(file),
+      options,
+      hash,
+    );
+  }
   const bytes = await openBytes(file, { input: options.input, hash, expected });
   const source = bytes[Symbol.asyncIterator]();
   const shape = options.shape ?? OWN_SHAPE;
@@ -74,6 +87,25 @@ export async function openTrace(file: string, options: TraceOptions = {}): Promi
     await source.return?.(); // closes the file
     throw error;
   }
+}
+
+/** A trace whose file holds columns. Its hash is that of the file's bytes, read once more for it. */
+async function openColumnFile(file: string, columns: ColumnFile, options: TraceOptions, hash: Hash): Promise<Trace> {
+  const header = readHeader(columns.names, 1, file, options.shape ?? OWN_SHAPE);
+  if (header.kind === 'kernel') {
+    throw new InputError({
+      where: { file },
+      found: 'a kernel trace in columns',
+      expected: 'an access trace; kernel traces are CSV',
+      hint: 'write it as .csv',
+    });
+  }
+  for await (const chunk of createReadStream(file, { highWaterMark: CHUNK })) hash.update(chunk);
+  const reading = startReading(file, header, new Tolerance(options.skipBadRows ?? 0), options, hash);
+  const wanted = [...new Set([...header.at.values()].filter((at) => at < header.names.length))].map(
+    (at) => header.names[at],
+  );
+  return accessTrace(reading, readColumns(reading, columns.blocks(wanted)));
 }
 
 function startReading(file: string, header: Header, tolerance: Tolerance, options: TraceOptions, hash: Hash): Reading {
@@ -193,6 +225,13 @@ export async function openBytes(
     }
     return decode(hashed(input, file, hash), file, 'by content');
   }
+  await mustBeFile(file, expected);
+  const raw = hashed(createReadStream(file, { highWaterMark: CHUNK }), file, hash);
+  return decode(raw, file, file.endsWith('.gz') ? 'gzip' : 'plain');
+}
+
+/** Throws InputError when there is no such file, SystemError when the system will not say. */
+async function mustBeFile(file: string, expected: string): Promise<void> {
   let found: string | null = null;
   try {
     if ((await stat(file)).isDirectory()) found = 'a directory';
@@ -210,6 +249,4 @@ export async function openBytes(
       hint: found === 'a directory' ? 'name a file in it' : 'check the path',
     });
   }
-  const raw = hashed(createReadStream(file, { highWaterMark: CHUNK }), file, hash);
-  return decode(raw, file, file.endsWith('.gz') ? 'gzip' : 'plain');
 }

@@ -14,7 +14,11 @@ export const roofline = command({
   usage: 'roofline <trace>',
   about: 'simulate, and set each kernel against its bound and its own estimate',
   positionals: {
-    trace: { type: 'string', demandOption: true, describe: 'trace file (.csv, .csv.gz), or - for standard input' },
+    trace: {
+      type: 'string',
+      demandOption: true,
+      describe: 'trace (.csv, .csv.gz, .parquet, .arrow), or - for standard input',
+    },
   },
   options: {
     ...PACKAGE,

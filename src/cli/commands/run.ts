@@ -22,7 +22,11 @@ export const run = command({
   usage: 'run <trace>',
   about: 'simulate a trace on a package and report',
   positionals: {
-    trace: { type: 'string', demandOption: true, describe: 'trace file (.csv, .csv.gz), or - for standard input' },
+    trace: {
+      type: 'string',
+      demandOption: true,
+      describe: 'trace (.csv, .csv.gz, .parquet, .arrow), or - for standard input',
+    },
   },
   options: {
     ...PACKAGE,
