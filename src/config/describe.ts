@@ -75,7 +75,7 @@ export function describePackage(pkg: Package): Description {
           ]),
         ),
         rule_sources: {
-          buses: device?.buses.source ?? '',
+          buses: same(group.buses, device?.buses.value) ? (device?.buses.source ?? '') : 'package file',
           activate_window_scope: device?.activateWindowScope.source ?? '',
           refresh_scope: device?.refreshScope.source ?? '',
           postpone: device?.postpone.source ?? '',
@@ -90,6 +90,10 @@ export function describePackage(pkg: Package): Description {
     domains: domains(pkg),
     address_map: { ...pkg.addressMap, bits: addressBits(pkg) },
   };
+}
+
+function same(a: object, b: object | undefined): boolean {
+  return JSON.stringify(a) === JSON.stringify(b);
 }
 
 function frequencyOf(text: string): number {

@@ -141,6 +141,7 @@ export type InterleaveUnit = 'stack' | 'channel' | 'pseudo_channel';
 export interface AddressMap {
   readonly granuleBytes: number; // bytes that stay together before the next unit
   readonly interleave: readonly InterleaveUnit[]; // fastest first; always contains stack and channel
+  readonly rotate: boolean; // each round over the units begins at another one, by a hash of its number
   /** Bit fields of the address inside an interleave unit, lowest first, above the atom's byte bits. A name may return. */
   readonly fields: readonly { readonly name: FieldName; readonly bits: number }[];
   /** Output bit `bit` of `target` is XORed with the parity of these row bits. */

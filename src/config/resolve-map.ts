@@ -73,7 +73,13 @@ export function resolveMap(file: PackageFile['address_map'], memory: MemoryGroup
       expected: 'at most 31 bits of atoms in one interleave unit',
     });
   }
-  return { granuleBytes, interleave: file.interleave, fields, xor: folding(file, memory, counts, place) };
+  return {
+    granuleBytes,
+    interleave: file.interleave,
+    rotate: file.rotate,
+    fields,
+    xor: folding(file, memory, counts, place),
+  };
 }
 
 function folding(

@@ -2,7 +2,7 @@ import { InputError, type Where } from '../errors.js';
 import { parseSeparation, parseTemperature, parseTime } from '../units.js';
 import { checkMemory } from './check.js';
 import { DEVICES } from './devices/index.js';
-import type { Controller, MemoryGroup, Organisation, Timing, TimingName } from './package.js';
+import type { CommandBuses, Controller, MemoryGroup, Organisation, Timing, TimingName } from './package.js';
 import { TIMING_NAMES } from './package.js';
 import type { PackageFile } from './schema.js';
 import { toClocks } from './timing.js';
@@ -71,7 +71,7 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
     organisation,
     timings,
     activateWindowScope: file.activate_window_scope ?? device.activateWindowScope.value,
-    buses: device.buses.value,
+    buses: resolveBuses(file.command_buses, device.buses.value, [...path, 'command_buses'], place),
     refresh: {
       mode: file.refresh.mode,
       scope: file.refresh.scope ?? device.refreshScope.value,
@@ -89,6 +89,34 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
   };
   checkMemory(group, path, place);
   return group;
+}
+
+const LONGEST_COMMAND_HALF_CK = 64; // common practice, no source: no device comes near it
+
+function resolveBuses(
+  file: MemoryFile['command_buses'],
+  device: CommandBuses,
+  path: Path,
+  place: Place,
+): MemoryGroup['buses'] {
+  const half = (key: 'act' | 'precharge' | 'refresh' | 'column', otherwise: number): number => {
+    const text = file?.[key];
+    if (text === undefined) return otherwise;
+    const clocks = Number(/^(\d+(?:\.[05])?)\s*ck$/.exec(text.trim())?.[1]);
+    if (clocks > 0 && 2 * clocks <= LONGEST_COMMAND_HALF_CK) return 2 * clocks;
+    throw new InputError({
+      where: place([...path, key]),
+      found: `'${text}'`,
+      expected: `whole or half clocks from 0.5 ck to ${LONGEST_COMMAND_HALF_CK / 2} ck, for example 1.5 ck`,
+    });
+  };
+  return {
+    separate: file?.separate ?? device.separate,
+    actHalfCk: half('act', device.actHalfCk),
+    preHalfCk: half('precharge', device.preHalfCk),
+    refHalfCk: half('refresh', device.refHalfCk),
+    columnHalfCk: half('column', device.columnHalfCk),
+  };
 }
 
 function resolveController(file: MemoryFile['controller'], clockPs: number, path: Path, place: Place): Controller {

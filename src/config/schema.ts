@@ -98,6 +98,16 @@ const memory = z
       .enum(['pseudo_channel', 'sid'])
       .optional()
       .meta({ description: 'where tRRD and tFAW hold; default: the device’s' }),
+    command_buses: z
+      .strictObject({
+        separate: z.boolean().optional().meta({ description: 'a row bus and a column bus; false: one bus for both' }),
+        act: quantity('clocks an ACT holds its bus, for example 1.5 ck').optional(),
+        precharge: quantity('clocks a precharge holds its bus').optional(),
+        refresh: quantity('clocks a refresh holds its bus').optional(),
+        column: quantity('clocks a read or write holds its bus').optional(),
+      })
+      .optional()
+      .meta({ description: 'overrides of the device’s command buses; whole and half clocks' }),
     refresh,
     controller,
     base_die: z
@@ -159,6 +169,10 @@ const addressMap = z
       .min(2)
       .meta({ description: 'units consecutive granules go to, fastest first; any counts' }),
     granule: quantity('bytes that stay together before the next unit'),
+    rotate: z.boolean().default(false).meta({
+      description:
+        'each round over the units begins at another one, by a hash of the round’s number: strides no longer meet in few units',
+    }),
     fields: z
       .array(z.string().regex(/^(column|bank_group|bank|sid|row|pseudo_channel):\d+$/, 'field:bits'))
       .min(1)

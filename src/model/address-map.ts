@@ -11,6 +11,8 @@ const SLICE_MASK = (1 << SLICE_BITS) - 1;
  * GF(2), so three table look-ups and two XORs decode an atom number whatever the fields and the folding
  * (permutation-based interleaving: Zhang, Zhu and Zhang, 2000).
  *
+ * With `rotate`, every round over the units is turned by a hash of its number: still one address for each place.
+ *
  * `decode` leaves its answer in `p`, `bank`, `row` and `column`, so that nothing is allocated for a request.
  */
 export class AddressMap {
@@ -22,6 +24,7 @@ export class AddressMap {
   readonly pieceBytes: number;
 
   private readonly base: Float64Array; // first address of a die's range
+  private readonly rotate: boolean;
   private readonly units: Int32Array; // interleave units of a die
   private readonly unitStart: Int32Array; // where a die's units start in unitPlace
   private readonly unitPlace: Int32Array; // pseudo-channel of an interleave unit, before folding
@@ -49,6 +52,7 @@ export class AddressMap {
     const { organisation: o } = memoryOf(pkg);
     this.atomBytes = o.atom_bytes;
     this.granule = spec.granuleBytes;
+    this.rotate = spec.rotate;
     this.atomsPerGranule = this.granule / this.atomBytes;
     const bits = (count: number): number => Math.ceil(Math.log2(count));
     const width: Record<FieldName, number> = {
@@ -158,7 +162,9 @@ export class AddressMap {
       this.middle[(atom >>> SLICE_BITS) & SLICE_MASK] ^
       this.high[(atom >>> (2 * SLICE_BITS)) & SLICE_MASK];
     const row = packed >>> this.rowShift;
-    let p = this.unitPlace[this.unitStart[domain] + (block - local * units)];
+    let unit = block - local * units;
+    if (this.rotate) unit = (unit + turn(local)) % units;
+    let p = this.unitPlace[this.unitStart[domain] + unit];
     if (this.unitFold.length > 0) p = this.fold(p, row);
     this.p = p + ((packed >>> this.pseudoShift) & this.pseudoMask);
     this.row = row;
@@ -171,7 +177,8 @@ export class AddressMap {
     const inField = p & this.pseudoMask;
     const unitP = this.fold(p - inField, row);
     const start = this.unitStart[domain];
-    const unit = this.unitPlace.subarray(start, start + this.units[domain]).indexOf(unitP);
+    const units = this.units[domain];
+    let unit = this.unitPlace.subarray(start, start + units).indexOf(unitP);
     if (unit < 0) return -1;
     // undo the folding: the row is never changed by it, so its contribution can be XORed out again
     let packed = column | (bank << this.bankShift) | (inField << this.pseudoShift) | (row << this.rowShift);
@@ -193,7 +200,8 @@ export class AddressMap {
     }
     const local = Math.floor(atom / this.atomsPerGranule);
     const within = (atom - local * this.atomsPerGranule) * this.atomBytes;
-    return this.base[domain] + (local * this.units[domain] + unit) * this.granule + within;
+    if (this.rotate) unit = (unit + units - (turn(local) % units)) % units;
+    return this.base[domain] + (local * units + unit) * this.granule + within;
   }
 
   /** The die whose range holds an address, -1 when none does. */
@@ -212,6 +220,14 @@ export class AddressMap {
     }
     return folded;
   }
+}
+
+/** By how many units round `local` is turned: a mix of its bits, so that no stride of rounds keeps to a few units. */
+function turn(local: number): number {
+  let mixed = (local >>> 0) ^ Math.floor(local / 2 ** 32);
+  mixed = Math.imul(mixed ^ (mixed >>> 16), 0x45d9f3b);
+  mixed = Math.imul(mixed ^ (mixed >>> 15), 0x2c1b3c6d);
+  return (mixed ^ (mixed >>> 14)) >>> 4; // below 2^28, so that adding a unit stays exact
 }
 
 function parity(value: number): number {

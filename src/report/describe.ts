@@ -136,7 +136,7 @@ function latency({ links: all }: Description): string {
 }
 
 function addressMap({ address_map: map }: Description, { width }: Ink): string {
-  const order = `  interleaved by ${formatBytes(map.granuleBytes)} over ${map.interleave.map((unit) => unit.replace('_', '-')).join(', then ')}`;
+  const order = `  interleaved by ${formatBytes(map.granuleBytes)} over ${map.interleave.map((unit) => unit.replace('_', '-')).join(', then ')}${map.rotate ? ', each round turned by a hash' : ''}`;
   const fields = facts(runs(map.bits), width, '  ');
   const folds = map.bits
     .filter((bit) => bit.folded_into.length > 0)

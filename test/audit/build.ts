@@ -97,7 +97,7 @@ export function device(change: Device = {}): Package {
     dies: [],
     memory: [memory],
     links: [],
-    addressMap: { granuleBytes: 256, interleave: ['stack', 'channel'], fields: [], xor: [] },
+    addressMap: { granuleBytes: 256, interleave: ['stack', 'channel'], rotate: false, fields: [], xor: [] },
   };
 }
 

@@ -33,6 +33,7 @@ ${links.join('\n')}
 address_map:
   interleave: [${map.interleave.join(', ')}]
   granule: ${map.granuleAtoms * o.atom_bytes} B
+  rotate: ${map.rotate}
   fields: [${map.fields.join(', ')}]
   xor: { ${xor.join(', ')} }
 `,
@@ -50,6 +51,7 @@ interface MapCase {
   >;
   readonly interleave: readonly string[];
   readonly granuleAtoms: number;
+  readonly rotate: boolean;
   readonly fields: readonly string[];
   readonly xor: readonly (readonly [string, number, readonly number[]])[];
 }
@@ -71,6 +73,7 @@ function anyMap(large: boolean): fc.Arbitrary<MapCase> {
       columns: fc.constantFrom(...(large ? [8, 16, 32, 64] : [2, 4])),
       atom_bytes: fc.constantFrom(32, 64),
       granuleAtoms: fc.constantFrom(1, 2, 3, 8, 12, 32),
+      rotate: fc.boolean(),
       pseudoIsField: fc.boolean(),
       order: fc.array(fc.nat(1000), { minLength: 40, maxLength: 40 }),
       split: fc.array(fc.boolean(), { minLength: 12, maxLength: 12 }),
@@ -128,6 +131,7 @@ function anyMap(large: boolean): fc.Arbitrary<MapCase> {
         o: { channels, pseudo_channels, sids, bank_groups, banks_per_group, rows, columns, atom_bytes },
         interleave: shuffled(units, r.unitOrder),
         granuleAtoms: r.granuleAtoms,
+        rotate: r.rotate,
         fields: fields.length > 0 ? fields : ['column:0'],
         xor: [...xor.values()],
       };
@@ -230,6 +234,7 @@ describe('the address map is a bijection', () => {
       },
       interleave: ['channel', 'stack', 'pseudo_channel'],
       granuleAtoms: 8,
+      rotate: false,
       fields: ['column:5', 'bank_group:2', 'bank:2', 'row:8'],
       xor: [],
     };
@@ -254,5 +259,42 @@ describe('the address map is a bijection', () => {
       expect([b.row, b.column, b.p]).toEqual([a.row, a.column, a.p]);
     }
     expect(banks.map((set) => set.size)).toEqual([1, 16]);
+  });
+
+  it('turned rounds spread a stride of whole rounds over the units, and leave a sequence as even as it was', () => {
+    const map: MapCase = {
+      stacks: [3],
+      o: {
+        channels: 8,
+        pseudo_channels: 2,
+        sids: 1,
+        bank_groups: 4,
+        banks_per_group: 4,
+        rows: 256,
+        columns: 32,
+        atom_bytes: 32,
+      },
+      interleave: ['pseudo_channel', 'channel', 'stack'],
+      granuleAtoms: 8,
+      rotate: true,
+      fields: ['column:5', 'bank_group:2', 'bank:2', 'row:8'],
+      xor: [],
+    };
+    const units = 3 * 8 * 2;
+    const met = (rotate: boolean, stride: number): number[] => {
+      const pkg = mapped({ ...map, rotate });
+      const m = new AddressMap(pkg, domains(pkg));
+      const counts = new Array<number>(units).fill(0);
+      for (let i = 0; i < 100 * units; i++) {
+        m.decode(0, i * stride);
+        counts[m.p]++;
+      }
+      return counts;
+    };
+    // a granule after the other: each unit a hundred times, turned or not
+    expect(met(true, 256)).toEqual(new Array(units).fill(100));
+    // a round at a time: one unit without; with it all of them, about a hundred times each (five standard deviations: 50)
+    expect(met(false, 256 * units).filter((count) => count > 0)).toEqual([100 * units]);
+    for (const count of met(true, 256 * units)) expect(Math.abs(count - 100)).toBeLessThan(50);
   });
 });

@@ -41,6 +41,16 @@ it('the text all cases are made from is a good one', () => {
 
 // [part of the good text, what stands there instead, what is said]
 const CASES: [string, string, string][] = [
+  [
+    'stacks: 2',
+    'stacks: 2\n    command_buses: { act: 1.2 ck }',
+    "p.yaml:9:27: memory.0.command_buses.act: found '1.2 ck'; expected whole or half clocks from 0.5 ck to 32 ck, for example 1.5 ck",
+  ],
+  [
+    'stacks: 2',
+    'stacks: 2\n    command_buses: { act: 0 ck }',
+    "p.yaml:9:27: memory.0.command_buses.act: found '0 ck'; expected whole or half clocks from 0.5 ck to 32 ck, for example 1.5 ck",
+  ],
   ['window: 4', 'windw: 4', "p.yaml:4:45: compute.0.windw: found unknown key 'windw'; expected 'window'"],
   ['window: 4', 'window: 0', 'p.yaml:4:53: compute.0.window: found 0; expected at least 1'],
   ['window: 4', 'window: 4 B', "p.yaml:4:53: compute.0.window: found '4 B'; expected a number"],
