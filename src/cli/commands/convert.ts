@@ -24,10 +24,7 @@ export const convert = command({
   },
   options: { ...SHAPE },
   examples: [
-    [
-      'convert capture.csv trace.parquet --columns address=Addr:hex,op=Kind,bytes==64 --ops read=LD,write=ST',
-      'a captured trace',
-    ],
+    ['convert capture.csv trace.parquet --columns-file capture.yaml', 'a captured trace of another shape'],
     ['convert trace.parquet trace.csv.gz', 'and back to text'],
   ],
   main: async (args, session) => {
