@@ -68,8 +68,8 @@ it('a package with a value or key changed is refused as an InputError, or runs',
       expect(recording.checks.every((check) => check.ok)).toBe(true);
       ran++;
     }),
-    { seed: 3, numRuns: 800 },
+    { seed: 3, numRuns: 500 },
   );
-  expect(ran).toBeGreaterThan(60);
-  expect(refused).toBeGreaterThan(200);
+  expect(ran).toBeGreaterThan(30);
+  expect(refused).toBeGreaterThan(120);
 }, 120_000);

@@ -7,11 +7,11 @@ import { build, type Design, PATTERNS, PLAIN, REFRESHES, rowsOf } from './cases.
 
 /*
  * The audit, a second reading of the timing rules, over what the engine does: every pattern x page policy x refresh mode x mix of
- * reads and writes x device. `npm test` takes a slice of several million commands, `npm run soak` runs eight times as long.
+ * reads and writes x device. `npm test` takes a slice of several million commands, `npm run soak` runs thirteen times as long.
  */
 const { MODE } = (import.meta as unknown as { env: { MODE: string } }).env;
 const SOAK = MODE === 'soak';
-const ROWS = SOAK ? 4_000 : 500;
+const ROWS = SOAK ? 4_000 : 300;
 const MIXES = [0, 0.5, 1]; // share of writes
 let commands = 0;
 
