@@ -11,5 +11,6 @@ export { type Bounds, boundsOf } from './bounds.js';
 export { Delays } from './delays.js';
 export { Histogram } from './histogram.js';
 export { type Loss, type LossName, type Standing, standings } from './losses.js';
+export { LINE, type ProfileResult, profile } from './profile/index.js';
 export { buildResult, type Origin } from './result.js';
 export * from './result-schema.js';

@@ -4,6 +4,7 @@ import { VERSION } from '../index.js';
 import { audit } from './commands/audit.js';
 import { convert } from './commands/convert.js';
 import { describe } from './commands/describe.js';
+import { profile } from './commands/profile.js';
 import { roofline } from './commands/roofline.js';
 import { run } from './commands/run.js';
 import { schema } from './commands/schema.js';
@@ -11,7 +12,7 @@ import { synth } from './commands/synth.js';
 import type { Session } from './session.js';
 import { usageError } from './usage.js';
 
-const COMMANDS = [run, roofline, describe, synth, convert, audit, schema];
+const COMMANDS = [run, roofline, describe, profile, synth, convert, audit, schema];
 const WIDTH = 100; // columns of the help, at most
 
 /** Understands the words after the program's name and does what they ask. Throws UsageError, or what the command throws. */

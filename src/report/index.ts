@@ -9,6 +9,7 @@ export { csvTable, TABLE_NAMES, type TableName, tableHead } from './csv.js';
 export { descriptionReport } from './describe.js';
 export { htmlReport } from './html/index.js';
 export { jsonReport, prettyJson } from './json.js';
+export { profileReport } from './profile.js';
 export { rooflineReport } from './roofline.js';
 export { ink, plain, type TextStyle, table, wrap } from './style.js';
 export { textReport } from './text.js';

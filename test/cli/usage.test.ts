@@ -8,7 +8,7 @@ import { build, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 beforeAll(build, 120_000);
 
-const COMMANDS = ['run', 'roofline', 'describe', 'synth', 'convert', 'audit', 'schema'];
+const COMMANDS = ['run', 'roofline', 'describe', 'profile', 'synth', 'convert', 'audit', 'schema'];
 const TRACE = join(ROOT, 'traces/wagtail-step.csv');
 
 /** What must be refused: the arguments, the exit code, and what the message must say. */
