@@ -1,3 +1,4 @@
+import { createHash } from 'node:crypto';
 import { readFileSync, statSync, writeFileSync } from 'node:fs';
 import { pathToFileURL } from 'node:url';
 import type { Browser, Page } from 'playwright-core';
@@ -82,13 +83,12 @@ function colours(page: Page, chart: string): Promise<number> {
   });
 }
 
-/** What a chart shows, as text that is equal for equal pictures. */
-function picture(page: Page, chart: string): Promise<string> {
-  return page
+/** A short text that is equal for equal pictures of a chart. */
+async function picture(page: Page, chart: string): Promise<string> {
+  const layers = await page
     .locator(`[data-chart="${chart}"] canvas`)
-    .evaluateAll((layers: unknown[]) =>
-      layers.map((canvas) => (canvas as { toDataURL(): string }).toDataURL()).join(' '),
-    );
+    .evaluateAll((all: unknown[]) => all.map((canvas) => (canvas as { toDataURL(): string }).toDataURL()).join(' '));
+  return createHash('sha256').update(layers).digest('hex');
 }
 
 const kernelColumn = (page: Page, column: number): Promise<string[]> =>
@@ -265,6 +265,26 @@ test('the heat map shows what is chosen', async () => {
   const bytes = await picture(page, 'banks');
   await page.locator('[data-metric]').selectOption('row conflicts');
   expect(await picture(page, 'banks')).not.toBe(bytes);
+});
+
+test('on paper nothing is wider than the page, and the map of banks is drawn at once', async () => {
+  const { page } = await open(demo, { viewport: { width: 690, height: 900 } }); // A4 less its margins
+  await page.emulateMedia({ media: 'print' });
+  expect(await page.evaluate('document.documentElement.scrollWidth - innerWidth')).toBe(0);
+  const bottom = (): Promise<number[]> =>
+    page
+      .locator('[data-chart="banks"] canvas')
+      .first()
+      .evaluate((canvas: unknown) => {
+        const { width, height, ...made } = canvas as { width: number; height: number };
+        const context = (
+          canvas as typeof made & {
+            getContext(kind: string): { getImageData(...of: number[]): { data: ArrayLike<number> } };
+          }
+        ).getContext('2d');
+        return Array.from(context.getImageData(width / 2, height - 100, 1, 1).data);
+      });
+  expect((await bottom())[3]).toBe(255); // the last rows are painted
 });
 
 test('without scripts every figure is still there, in tables', async () => {

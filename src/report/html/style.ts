@@ -46,6 +46,10 @@ const THEME: Readonly<Record<string, Colour>> = {
   alarm: ['#a3251f', '#ff8f86'],
   attained: ['#0a5c63', '#6cc5c9'],
   estimate: ['#b25a12', '#f0a35c'],
+  // of the map of banks: on paper the most is darkest, on a dark screen brightest
+  'heat-1': ['#8fc0bd', '#24606a'],
+  'heat-2': ['#1f7078', '#5cb8bb'],
+  'heat-3': ['#7d1d2c', '#ffd79a'],
 };
 
 function variables(which: 0 | 1): string {
@@ -160,7 +164,12 @@ h2,h3,.reading{break-after:avoid}
 details:not([open]){display:none}
 .scroll{overflow:visible;max-height:none}
 table{font-size:7.5pt}
-th,td{padding:.1rem .3rem}
+th,td{padding:.1rem .25rem}
+.sortable{font-size:5.6pt}
+.sortable tbody th{overflow-wrap:anywhere}
+.sortable th,.sortable td,.sortable thead button,td.t:last-child{white-space:normal;min-width:0}
+.sortable th,.sortable td,.sortable thead button{padding:.1rem .15rem}
+.sortable thead button span::after{content:none}
 thead th,#kernel-table tbody th{position:static}
 .f-x,rect{print-color-adjust:exact;-webkit-print-color-adjust:exact}
 }

@@ -40,6 +40,7 @@ export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metri
           },
         }),
         visualMap: {
+          dimension: 2,
           type: 'continuous',
           min: 0,
           max: Math.max(1, top),
@@ -51,8 +52,8 @@ export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metri
           formatter: (value: number) => show(value),
           text: [top < most ? `over ${show(top)}` : show(top), '0'],
           textStyle: { color: ink.soft },
-          outOfRange: { color: [ink.of('row_cycle')] },
-          inRange: { color: [ink.room, ink.of('starved_up_link'), ink.of('starved_window'), ink.of('row_cycle')] },
+          outOfRange: { color: [ink.heat[3]] },
+          inRange: { color: [...ink.heat] },
         },
         tooltip: {
           ...tooltip(ink, (params: { value: number[] }) => {
@@ -63,16 +64,40 @@ export function banksPlot({ banks: { rows, columns, metrics } }: PageData, metri
             ]);
           }),
         },
+        // cells of a custom series are painted in one go, so that a page sent to the printer has them all
         series: [
           {
-            type: 'heatmap',
+            type: 'custom',
             name: label,
             progressive: 0,
-            emphasis: { itemStyle: { borderColor: ink.ink, borderWidth: 1 } },
+            encode: { x: 0, y: 1 },
             data: values.map((value, i) => [i % columns.length, Math.floor(i / columns.length), value]),
+            renderItem: (_: unknown, api: Api) => cell(api, ink.ink),
           },
         ],
       };
     },
+  };
+}
+
+interface Api {
+  value(dimension: number): number;
+  coord(point: readonly number[]): number[];
+  size(of: readonly number[]): number[];
+  visual(what: 'color'): string;
+}
+
+/** A bank's cell; its edges are those of its neighbours, in whole pixels. */
+function cell(api: Api, outline: string) {
+  const [x, y] = api.coord([api.value(0), api.value(1)]);
+  const [width, height] = api.size([1, 1]);
+  // a hair over the half, so that both cells at an edge round it alike
+  const edge = (at: number): number => Math.round(at + 1e-6);
+  const [left, top] = [edge(x - width / 2), edge(y - height / 2)];
+  return {
+    type: 'rect',
+    shape: { x: left, y: top, width: edge(x + width / 2) - left, height: edge(y + height / 2) - top },
+    style: { fill: api.visual('color') },
+    emphasis: { style: { stroke: outline, lineWidth: 1 } },
   };
 }

@@ -1,5 +1,5 @@
 /** The parts of ECharts that the page uses; what is not named here is not in the bundle. */
-import { BarChart, CustomChart, HeatmapChart, LineChart, ScatterChart } from 'echarts/charts';
+import { BarChart, CustomChart, LineChart, ScatterChart } from 'echarts/charts';
 import {
   DataZoomInsideComponent,
   GridComponent,
@@ -13,7 +13,6 @@ import { CanvasRenderer } from 'echarts/renderers';
 use([
   BarChart,
   CustomChart,
-  HeatmapChart,
   LineChart,
   ScatterChart,
   DataZoomInsideComponent,

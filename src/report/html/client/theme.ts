@@ -8,6 +8,7 @@ export interface Ink {
   readonly room: string;
   readonly attained: string;
   readonly estimate: string;
+  readonly heat: readonly string[]; // from nothing to most
   of(name: string): string; // a class of the stack or a stage
 }
 
@@ -23,6 +24,7 @@ export function inkNow(): Ink {
     room: value('room'),
     attained: value('attained'),
     estimate: value('estimate'),
+    heat: ['room', 'heat-1', 'heat-2', 'heat-3'].map(value),
     of: (name) => value(`c-${name}`),
   };
 }
