@@ -2,48 +2,8 @@ import type { Result } from '../../analysis/result-schema.js';
 import { STACK_CLASSES, STAGES } from '../../engine/recording.js';
 import { LABELS, stageLabel } from '../labels.js';
 import { plain } from '../style.js';
-import { type RooflineData, rooflineData } from './roofline-data.js';
-
-/** What the page's charts draw: plain numbers, made here so that the page's own program only draws. Names are text, not markup. */
-export interface PageData {
-  /** Classes of the bandwidth stack that got any clock, in the stack's order. */
-  readonly classes: readonly { readonly key: string; readonly label: string }[];
-  readonly kernelStacks: KernelStacks;
-  readonly time: TimeData;
-  readonly delays: DelayData;
-  readonly roofline: RooflineData;
-  readonly banks: BankData;
-}
-
-export interface KernelStacks {
-  readonly names: readonly string[];
-  readonly shares: readonly (readonly number[])[]; // shares[kernel][class of PageData.classes], 0 … 1
-}
-
-export interface TimeData {
-  readonly slicePs: number; // of the bandwidth
-  readonly read: readonly number[]; // bytes a second by slice
-  readonly write: readonly number[];
-  readonly bound: number; // bytes a second
-  readonly stackSlicePs: number; // of the shares
-  readonly shares: readonly (readonly number[])[]; // shares[class of PageData.classes][slice], 0 … 1
-  readonly kernels: readonly { readonly name: string; readonly startPs: number; readonly endPs: number }[];
-  readonly lanes: readonly number[]; // lane of each kernel: kernels of one lane do not overlap
-  readonly endPs: number;
-}
-
-export interface DelayData {
-  readonly fromPs: readonly number[]; // delays, rising
-  /** beyond[i]: share of the reads whose delay is fromPs[i] or more; 'read latency' first, then the stages. */
-  readonly series: readonly { readonly label: string; readonly beyond: readonly number[] }[];
-}
-
-export interface BankData {
-  readonly rows: readonly string[]; // pseudo-channels: stack.channel.pseudo-channel
-  readonly columns: readonly string[]; // banks: stack ID.bank group.bank
-  readonly atomBytes: number;
-  readonly metrics: readonly { readonly key: string; readonly label: string; readonly values: readonly number[] }[]; // row after row
-}
+import type { BankData, DelayData, KernelStacks, PageData, TimeData } from './page-data.js';
+import { rooflineData } from './roofline-data.js';
 
 export const MOST_KERNELS = 40; // kernels in a chart; the table has more
 const MOST_SPANS = 4000; // kernels on the time axis

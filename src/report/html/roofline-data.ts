@@ -1,23 +1,6 @@
 import type { Result } from '../../analysis/result-schema.js';
 import { plain } from '../style.js';
-
-/** The roofline plot: kernels with flops as points over FLOP per moved byte, and the ceilings of the whole package. */
-export interface RooflineData {
-  readonly points: readonly RooflinePoint[];
-  readonly slopes: readonly { readonly label: string; readonly bytesPerS: number }[]; // ceilings of bandwidth
-  readonly roofs: readonly { readonly label: string; readonly flopsPerS: number }[]; // ceilings by number format
-  /** Every kernel that moved or computed anything, against its bound. */
-  readonly reached: readonly { readonly name: string; readonly ratio: number; readonly estimate: number | null }[];
-}
-
-export interface RooflinePoint {
-  readonly name: string;
-  readonly intensity: number; // FLOP per moved byte
-  readonly attained: number; // FLOP/s
-  readonly bound: number;
-  readonly estimate: number | null; // FLOP/s if the trace's own estimate of the time held
-  readonly by: string; // which ceiling its bound is
-}
+import type { RooflineData, RooflinePoint } from './page-data.js';
 
 export function rooflineData({ kernels, bandwidth, package: pkg }: Result): RooflineData {
   const points = kernels.flatMap((kernel): RooflinePoint[] => {

@@ -1,5 +1,5 @@
 import { formatBytes, formatCount } from '../../../units.js';
-import type { PageData } from '../data.js';
+import type { PageData } from '../page-data.js';
 import { axis, base, type Plot, tip, tooltip } from './base.js';
 
 /** Every bank as a cell: pseudo-channels from top to bottom, banks from left to right. */

@@ -1,5 +1,5 @@
 /** The page's program: draws the charts, fills the legends, sorts, zooms, and follows the theme. Runs in the browser. */
-import type { PageData } from '../data.js';
+import type { PageData } from '../page-data.js';
 import { banksPlot } from './banks.js';
 import type { Plot } from './base.js';
 import { delaysPlot } from './delays.js';

@@ -1,6 +1,5 @@
 import { formatBandwidth, formatFlops, formatPercent } from '../../../units.js';
-import type { PageData } from '../data.js';
-import type { RooflinePoint } from '../roofline-data.js';
+import type { PageData, RooflinePoint } from '../page-data.js';
 import { axis, base, brief, type Plot, tip, tooltip } from './base.js';
 import type { Ink } from './theme.js';
 

@@ -1,5 +1,5 @@
 import { formatPercent } from '../../../units.js';
-import type { PageData } from '../data.js';
+import type { PageData } from '../page-data.js';
 import { axis, base, brief, type Plot, tip, tooltip } from './base.js';
 import type { Hidden } from './legend.js';
 

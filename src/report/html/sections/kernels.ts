@@ -2,7 +2,7 @@ import type { KernelResult, Result } from '../../../analysis/result-schema.js';
 import { formatBandwidth, formatBytes, formatCount, formatFlops, formatPercent, formatTime } from '../../../units.js';
 import { longest } from '../data.js';
 import { html, type Markup } from '../markup.js';
-import type { RooflineData } from '../roofline-data.js';
+import type { RooflineData } from '../page-data.js';
 import { type Cell, type Column, cell, folded, table } from '../table.js';
 import { section } from './figure.js';
 import { lossTable } from './losses.js';

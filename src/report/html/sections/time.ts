@@ -1,7 +1,7 @@
 import type { Result } from '../../../analysis/result-schema.js';
 import { formatBandwidth, formatTime } from '../../../units.js';
-import type { PageData } from '../data.js';
 import { html, type Markup } from '../markup.js';
+import type { PageData } from '../page-data.js';
 import { folded, table } from '../table.js';
 import { section } from './figure.js';
 
