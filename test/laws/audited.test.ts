@@ -1,16 +1,13 @@
 import { afterAll, describe, expect, it } from 'vitest';
-import { COMMANDS as AUDITED, auditLines, createAudit } from '../../src/audit/index.js';
-import type { Package } from '../../src/config/package.js';
+import { COMMANDS as AUDITED } from '../../src/audit/index.js';
 import { COMMANDS } from '../../src/engine/index.js';
-import { accessTrace, simulate } from '../helpers/engine.js';
+import { audited, SOAK } from './audited.js';
 import { build, type Design, PATTERNS, PLAIN, REFRESHES, rowsOf } from './cases.js';
 
 /*
  * The audit, a second reading of the timing rules, over what the engine does: every pattern x page policy x refresh mode x mix of
  * reads and writes x device. `npm test` takes a slice of several million commands, `npm run soak` runs thirteen times as long.
  */
-const { MODE } = (import.meta as unknown as { env: { MODE: string } }).env;
-const SOAK = MODE === 'soak';
 const ROWS = SOAK ? 4_000 : 300;
 const MIXES = [0, 0.5, 1]; // share of writes
 let commands = 0;
@@ -18,33 +15,6 @@ let commands = 0;
 it('names the commands as the engine does', () => {
   expect(AUDITED).toEqual(COMMANDS);
 });
-
-/** Runs rows through a package and audits every command on its way; throws with what was found. */
-async function audited(pkg: Package, rows: Parameters<typeof accessTrace>[0]): Promise<number> {
-  const { organisation: o } = pkg.memory[0];
-  const audit = createAudit(pkg);
-  const { recording } = await simulate(pkg, accessTrace(rows, ['even', 'odd']), {
-    onCommand: (halfCk, p, sid, bankGroup, bank, row, column, command, request) => {
-      const channel = Math.floor(p / o.pseudo_channels);
-      audit.command(
-        halfCk,
-        Math.floor(channel / o.channels),
-        channel % o.channels,
-        p % o.pseudo_channels,
-        sid,
-        bankGroup,
-        bank,
-        row,
-        column,
-        command,
-        request,
-      );
-    },
-  });
-  const report = audit.finish(2 * recording.elapsedCk);
-  if (!report.ok) throw new Error(auditLines(report, 3).join('\n'));
-  return report.commands;
-}
 
 const DEVICES = ['hbm3-6.4', 'hbm2-1.8'] as const;
 describe.each(DEVICES)('%s', (device) => {
@@ -67,18 +37,23 @@ describe.each(DEVICES)('%s', (device) => {
 });
 
 describe('other corners', () => {
-  const corners: Partial<Design>[] = [
-    { scheduler: 'fcfs' },
-    { queue: 2, window: 6 },
-    { stacks: 2, eastStacks: 1, channels: 3, clocks: ['1.3 GHz', '2.1 GHz'] },
-    { fold: false },
+  const corners: [Partial<Design>, ...string[]][] = [
+    [{ scheduler: 'fcfs' }],
+    [{ queue: 2, window: 6 }],
+    [{ stacks: 2, eastStacks: 1, channels: 3, clocks: ['1.3 GHz', '2.1 GHz'] }],
+    [{ fold: false }],
+    [{}, 'memory.0.refresh.temperature=95 C'], // tREFI halved
+    [{}, 'memory.0.refresh.postpone=8'],
+    [{}, 'memory.0.activate_window_scope=sid'],
+    [{ page: 'closed' }, 'memory.0.command_buses.separate=false'],
+    [{ device: 'hbm2-1.8' }, 'memory.0.command_buses.separate=false'],
   ];
   it.each(corners)(
-    '%j',
-    async (corner) => {
+    '%j %s',
+    async (corner, ...overrides) => {
       for (const refresh of REFRESHES) {
         for (const pattern of ['uniform', 'strided', 'block'] as const) {
-          const pkg = build({ ...PLAIN, queue: 32, window: 64, refresh, ...corner });
+          const pkg = build({ ...PLAIN, queue: 32, window: 64, refresh, ...corner }, ...overrides);
           const work = { pattern, rows: ROWS, writes: 0.3, size: 64, gapPs: 0, after: false, tiles: false, seed: 5 };
           commands += await audited(pkg, rowsOf(pkg, work));
         }
