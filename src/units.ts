@@ -34,9 +34,10 @@ function parse(text: string, units: Units, where: Where, what: string): number {
   const expected = `${what} with a unit (${names.join(', ')})`;
   const match = QUANTITY.exec(text.trim());
   if (match === null) throw new InputError({ where, found: `'${text}'`, expected });
-  const factor = Object.hasOwn(units, match[2]) ? units[match[2]] : undefined;
+  const unit = match[2].replace(/^[µμ]/, 'u'); // the micro sign and the Greek letter
+  const factor = Object.hasOwn(units, unit) ? units[unit] : undefined;
   if (factor === undefined) {
-    const like = nearest(match[2], names);
+    const like = nearest(unit, names);
     throw new InputError({
       where,
       found:
@@ -47,7 +48,11 @@ function parse(text: string, units: Units, where: Where, what: string): number {
       hint: like === undefined ? undefined : `Did you mean '${match[1]} ${like}'?`,
     });
   }
-  return clean(Number(match[1]) * factor);
+  const value = Number(match[1]) * factor;
+  if (value === Number.POSITIVE_INFINITY || value === Number.NEGATIVE_INFINITY) {
+    throw new InputError({ where, found: `'${text}', beyond any number the program can hold`, expected });
+  }
+  return clean(value);
 }
 
 /** Takes the last bits of decimal arithmetic off: 1.1 ns is 1100 ps, not 1100.0000000000002. */
@@ -109,8 +114,12 @@ function digits(value: number): string {
 }
 
 function scaled(value: number, steps: readonly (readonly [number, string])[]): string {
-  for (const [factor, unit] of steps) if (Math.abs(value) >= factor) return `${digits(value / factor)} ${unit}`;
-  const [factor, unit] = steps[steps.length - 1];
+  const last = steps.length - 1;
+  let at = steps.findIndex(([factor]) => Math.abs(value) >= factor);
+  if (at < 0) at = last;
+  // what rounds up to one of the next greater unit is written in that unit
+  if (at > 0 && Math.abs(Number(digits(value / steps[at][0]))) * steps[at][0] >= steps[at - 1][0]) at--;
+  const [factor, unit] = steps[at];
   return `${digits(value / factor)} ${unit}`;
 }
 

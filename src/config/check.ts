@@ -53,26 +53,43 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
       expected: 'tCCD_S of at least the burst: the data bus carries one burst at a time',
     });
   }
+  // the longest that a row may need from its ACT until its bank is closed again: between two refreshes there must be room for it
+  const rowCycle = Math.max(ck('tRC'), ck('tRCDWR') + ck('WL') + o.burst_ck + ck('tWR') + ck('tRP'));
   if (refresh.mode === 'all-bank') {
     rule(
-      ck('tREFI') > ck('tRFCab') + ck('tRC'),
+      ck('tREFI') > ck('tRFCab') + rowCycle,
       'tREFI',
-      'tREFI longer than tRFCab + tRC, or nothing but refresh happens',
+      `tREFI longer than tRFCab and the ${rowCycle} ck of one row's use, or nothing but refresh happens`,
       'tREFI',
       'tRFCab',
-      'tRC',
     );
   }
   if (refresh.mode === 'per-bank') {
     const banks = o.bank_groups * o.banks_per_group * o.sids;
     rule(
-      ck('tREFI') / banks > ck('tRREFD'),
+      ck('tREFI') / banks >= ck('tRREFD') + ck('tRRD_L'),
       'tREFI',
-      `tREFI / ${banks} banks longer than tRREFD, or refresh cannot keep up`,
+      `tREFI / ${banks} banks of at least tRREFD + tRRD_L: between the refreshes of two banks there must be room for an ACT`,
       'tREFI',
       'tRREFD',
+      'tRRD_L',
     );
-    rule(ck('tREFI') > ck('tRFCpb') + ck('tRC'), 'tREFI', 'tREFI longer than tRFCpb + tRC', 'tREFI', 'tRFCpb', 'tRC');
+    if (refresh.refpbInActivateWindow) {
+      rule(
+        (2 * ck('tREFI')) / banks >= ck('tFAW'),
+        'tREFI',
+        `2 x tREFI / ${banks} banks of at least tFAW, in which per-bank refreshes count as activations`,
+        'tREFI',
+        'tFAW',
+      );
+    }
+    rule(
+      ck('tREFI') > ck('tRFCpb') + rowCycle,
+      'tREFI',
+      `tREFI longer than tRFCpb and the ${rowCycle} ck of one row's use`,
+      'tREFI',
+      'tRFCpb',
+    );
     if (o.bank_groups * o.banks_per_group > 32) {
       throw new InputError({
         where: place([...path, 'refresh', 'mode']),

@@ -26,17 +26,22 @@ export function ceilings(pkg: Package, link: Link): Ceilings {
   };
 }
 
-/** The longest request that reaches a controller: what stays in one row of one granule. */
-export function requestBytes(pkg: Package, die: number): number {
-  const { organisation: o } = pkg.memory[0];
+/** Longest run of consecutive columns of one row in the address map, bytes: requests are cut at its multiples. */
+export function pieceBytes(pkg: Package): number {
+  const { atom_bytes: atom } = pkg.memory[0].organisation;
   let columns = 0;
   for (const { name, bits } of pkg.addressMap.fields) {
     if (name !== 'column') break;
     columns += bits;
   }
-  let piece = o.atom_bytes * 2 ** columns;
+  let piece = atom * 2 ** columns;
   while (pkg.addressMap.granuleBytes % piece !== 0) piece /= 2;
-  return Math.min(piece, pkg.dies[die].requestBytes);
+  return piece;
+}
+
+/** The longest request that reaches a controller: what stays in one row of one granule. */
+export function requestBytes(pkg: Package, die: number): number {
+  return Math.min(pieceBytes(pkg), pkg.dies[die].requestBytes);
 }
 
 /** Unloaded latency of a one-atom read, ps by stage, for each state the row may be found in. */

@@ -1,11 +1,15 @@
-import { readFileSync } from 'node:fs';
+import { closeSync, openSync, readSync } from 'node:fs';
 import { resolve as absolute, dirname, isAbsolute, join } from 'node:path';
 import { InputError, nearest, SystemError, type Where } from '../errors.js';
+import { formatBytes } from '../units.js';
 import { checkPackage } from './check-package.js';
 import type { Package } from './package.js';
 import { resolve } from './resolve.js';
-import { merge, parseTree, type Tree, withValue } from './tree.js';
-import { keysAt, validate } from './validate.js';
+import { parseTree, parseValue } from './parse-tree.js';
+import { merge, namesOf, type Tree, withValue } from './tree.js';
+import { isOpenMap, validate } from './validate.js';
+
+const MOST_TEXT = 2 ** 22; // bytes of a package file
 
 /**
  * Loads a package file with everything it extends, and lays overrides (`path=value`, list items by number or name) over it.
@@ -53,24 +57,44 @@ function extended(tree: Tree, file: string, chain: readonly string[]): Tree {
   return merge(loadTree(target, chain, { ...base.where, path: 'extends' }), tree);
 }
 
+/** Text of a package file, read no further than one could be long: another file by mistake is refused at once. */
 function readText(file: string, from?: Where): string {
+  const where = from ?? { file };
+  const name = from === undefined ? '' : `'${file}', `;
+  let descriptor = -1;
   try {
-    return readFileSync(file, 'utf8');
+    descriptor = openSync(file, 'r');
+    const bytes = Buffer.alloc(MOST_TEXT + 1);
+    let length = 0;
+    for (let got = -1; got !== 0 && length < bytes.length; length += got)
+      got = readSync(descriptor, bytes, length, bytes.length - length, null);
+    if (length > MOST_TEXT) {
+      throw new InputError({
+        where,
+        found: `${name}a file of more than ${formatBytes(MOST_TEXT)}`,
+        expected: 'a package file (YAML)',
+      });
+    }
+    return bytes.toString('utf8', 0, length);
   } catch (error) {
+    if (error instanceof InputError) throw error;
     const { code } = error as NodeJS.ErrnoException;
-    const where = from ?? { file };
-    if (code === 'ENOENT')
+    if (code === 'ENOENT' || code === 'ENOTDIR') {
       throw new InputError({
         where,
         found: from ? `'${file}', a file that does not exist` : 'no such file',
         expected: 'a package file (YAML)',
       });
-    if (code === 'EISDIR') throw new InputError({ where, found: 'a directory', expected: 'a package file (YAML)' });
+    }
+    if (code === 'EISDIR')
+      throw new InputError({ where, found: `${name}a directory`, expected: 'a package file (YAML)' });
     throw new SystemError(`${file}: cannot be read (${code ?? String(error)})`);
+  } finally {
+    if (descriptor >= 0) closeSync(descriptor);
   }
 }
 
-/** Lays one `path=value` over the tree; the value is a YAML scalar. */
+/** Lays one `path=value` over the tree; the value is YAML. */
 function override(tree: Tree, text: string): Tree {
   const where: Where = { file: `--set ${text}` };
   const at = text.indexOf('=');
@@ -80,36 +104,33 @@ function override(tree: Tree, text: string): Tree {
       found: `'${text}'`,
       expected: 'path=value, for example memory.0.controller.read_queue=32',
     });
-  const path = text.slice(0, at).split('.');
-  const value = parseScalar(text.slice(at + 1), where);
+  const path = keyPath(text.slice(0, at).split('.'));
+  if (path[0] === 'extends') {
+    throw new InputError({
+      where,
+      found: 'the base of a package file',
+      expected: 'a key of the package itself: what a file extends is read before anything is set',
+    });
+  }
+  const value = parseValue(text.slice(at + 1), where);
   return withValue(tree, path, value, (step, below) => {
-    const known = below.kind === 'list' ? below.items.map((_, i) => String(i)) : [];
+    const names = below.kind === 'list' ? namesOf(below) : [];
+    const numbers = below.kind === 'list' ? `0 to ${below.items.length - 1}` : '';
+    const like = nearest(String(step), names);
     return new InputError({
       where,
       found: `no '${step}' on the way to ${path.join('.')}`,
       expected:
-        known.length > 0 ? `one of ${known.join(', ')}, or an item's name` : 'a path to a key of the package file',
-      hint:
-        nearest(String(step), keysAt([])) === undefined
-          ? undefined
-          : `Did you mean '${nearest(String(step), keysAt([]))}'?`,
+        below.kind === 'list'
+          ? `an item of the list: ${[...names, below.items.length === 1 ? '0' : numbers].join(', ')}`
+          : 'a path to a key of the package file',
+      hint: like === undefined ? undefined : `Did you mean '${like}'?`,
     });
   });
 }
 
-function parseScalar(text: string, where: Where): Tree {
-  const tree = parseTree(`value: ${text}`, where.file);
-  const value = tree.kind === 'map' ? tree.entries.get('value')?.value : undefined;
-  if (value === undefined) throw new InputError({ where, found: `'${text}'`, expected: 'a value' });
-  return withPlace(value, where);
-}
-
-/** The tree with one place for all its nodes, since an option has no lines. */
-function withPlace(tree: Tree, where: Where): Tree {
-  if (tree.kind === 'scalar') return { ...tree, where };
-  if (tree.kind === 'list') return { ...tree, where, items: tree.items.map((item) => withPlace(item, where)) };
-  const entries = new Map(
-    [...tree.entries].map(([key, { value }]) => [key, { key: where, value: withPlace(value, where) }]),
-  );
-  return { ...tree, where, entries };
+/** Keys of the user's own (number formats, folded bits) may have dots in them: there the rest of a path is one key. */
+function keyPath(steps: readonly string[]): string[] {
+  const free = steps.findIndex((_, i) => i > 0 && isOpenMap(steps.slice(0, i)));
+  return free < 0 ? [...steps] : [...steps.slice(0, free), steps.slice(free).join('.')];
 }

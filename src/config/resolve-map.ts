@@ -1,7 +1,7 @@
 import { InputError } from '../errors.js';
 import { formatBytes, parseBytes } from '../units.js';
 import type { AddressMap, FieldName, MemoryGroup } from './package.js';
-import type { PackageFile } from './schema.js';
+import { type PackageFile, XOR_TARGETS } from './schema.js';
 import { type Place, whole } from './values.js';
 
 type XorTarget = AddressMap['xor'][number]['target'];
@@ -89,7 +89,7 @@ function folding(
   place: Place,
 ): AddressMap['xor'] {
   const all: Record<XorTarget, number> = { ...counts, channel: o.channels, pseudo_channel: o.pseudo_channels };
-  return Object.entries(file.xor).map(([key, sources]) => {
+  const folds = Object.entries(file.xor).map(([key, sources]) => {
     const [target, bitText] = key.split('.') as [XorTarget, string];
     const where = place(['address_map', 'xor', key]);
     const bit = Number(bitText);
@@ -102,6 +102,10 @@ function folding(
       });
     }
     const rowBits = sources.map((source) => Number(source.split('.')[1]));
+    const twice = sources.find((source, i) => sources.indexOf(source) !== i);
+    if (twice !== undefined) {
+      throw new InputError({ where, found: `${twice} twice`, expected: 'each row bit once: two of them cancel' });
+    }
     const rowCount = Math.ceil(Math.log2(o.rows));
     for (const rowBit of rowBits) {
       if (rowBit >= rowCount) {
@@ -110,4 +114,6 @@ function folding(
     }
     return { target, bit, rowBits };
   });
+  // the order has no meaning, so packages that differ in nothing else are equal
+  return folds.sort((a, b) => XOR_TARGETS.indexOf(a.target) - XOR_TARGETS.indexOf(b.target) || a.bit - b.bit);
 }

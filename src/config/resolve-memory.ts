@@ -12,7 +12,9 @@ import { clockPeriod, latency, negative, type Place, positive, unknownName } fro
 type MemoryFile = PackageFile['memory'][number];
 
 const OVERRIDE = 'package file';
-const MOST_CK = 2 ** 20; // longest separation: ten of them still fit the engine's clock
+const REFRESH_TIMES: ReadonlySet<TimingName> = new Set(['tREFI', 'tRFCab', 'tRFCpb']);
+const MOST_REFRESH_CK = 2 ** 20; // their longest: ten of them still fit the engine's clock
+const MOST_CK = 2 ** 12; // longest of the others, some microseconds: what is under way in that time has to be kept
 const MOST_WAIT_CK = 2 ** 26; // longest age bound and page timeout, for the same reason
 const MOST_PIPELINE_CK = 2 ** 14; // answers under way in the pipeline have a place for each of its clocks
 const HOT = 85; // degrees Celsius above which refresh runs at twice the rate (JESD79-5 MR4, through a cross-standard digest)
@@ -50,8 +52,10 @@ export function resolveMemory(file: MemoryFile, path: Path, place: Place): Memor
       if (separation.ps < 0) throw negative(given ?? '', where);
       let ck = toClocks(separation, clockPs, name === 'tREFI' ? 'down' : 'up');
       let source = given === undefined ? device.timings[name].source : OVERRIDE;
-      if (ck > MOST_CK) {
-        throw new InputError({ where, found: `'${given}', ${ck} ck`, expected: `at most ${MOST_CK} ck` });
+      const most = REFRESH_TIMES.has(name) ? MOST_REFRESH_CK : MOST_CK;
+      if (ck > most) {
+        const found = `'${given ?? device.timings[name].value}', ${ck} ck`;
+        throw new InputError({ where, found, expected: `at most ${most} ck` });
       }
       if (name === 'tREFI' && temperatureC > HOT) {
         ck = Math.floor(ck / 2);

@@ -1,15 +1,16 @@
 import { createHash } from 'node:crypto';
 import { InputError, type Where } from '../errors.js';
-import { parseBytes, parseFlopRate, parseLength, parseTransfers } from '../units.js';
+import { formatTime, parseBytes, parseFlopRate, parseLength, parseTransfers } from '../units.js';
 import type { ComputeDie, Link, MemoryGroup, Package } from './package.js';
 import { resolveMap } from './resolve-map.js';
 import { resolveMemory } from './resolve-memory.js';
 import type { PackageFile } from './schema.js';
 import { locate, type Path, type Tree } from './tree.js';
-import { clockPeriod, latency, type Place, positive, unknownName, whole } from './values.js';
+import { clockPeriod, LONGEST_LATENCY_PS, latency, type Place, positive, unknownName, whole } from './values.js';
 
 const MOST_FLIT = 2 ** 16; // bytes, of a flit and of headers
 const MOST_LANDING = 2 ** 30;
+const MOST_TRANSFERS = 1e12; // a second and lane: beyond any wire
 
 /** Turns a valid document into a Package: units to numbers, names to indices, presets filled in. */
 export function resolve(file: PackageFile, tree: Tree, fileName: string): Package {
@@ -30,8 +31,14 @@ export function resolve(file: PackageFile, tree: Tree, fileName: string): Packag
     links,
     addressMap: resolveMap(file.address_map, memory[0], place),
   };
-  const hash = createHash('sha256').update(JSON.stringify(resolved)).digest('hex');
+  const hash = createHash('sha256').update(JSON.stringify(resolved, sorted)).digest('hex');
   return freeze({ ...resolved, file: fileName, hash });
+}
+
+/** For JSON.stringify: maps with their keys in order, so that the order they were written in does not show in the hash. */
+function sorted(_: string, value: unknown): unknown {
+  if (typeof value !== 'object' || value === null || Array.isArray(value)) return value;
+  return Object.fromEntries(Object.entries(value).sort(([a], [b]) => (a < b ? -1 : 1)));
 }
 
 function resolveDie(die: PackageFile['compute'][number], path: Path, place: Place): ComputeDie {
@@ -96,6 +103,15 @@ function resolveLinks(
       byStack.set(stack, resolveLink(link, name, die, stack, path, place));
     }
   });
+  const alike = sameName([...byStack.values()]);
+  if (alike !== null) {
+    const [first, second] = alike;
+    throw new InputError({
+      where: place(['links']),
+      found: `the name '${first.name}' for the links to stacks ${first.stack} and ${second.stack}: those of a range get .0, .1 … behind it`,
+      expected: 'a name of its own for each link',
+    });
+  }
   const missing = Array.from({ length: group.organisation.stacks }, (_, s) => s).filter((s) => !byStack.has(s));
   if (missing.length > 0) {
     throw new InputError({
@@ -113,6 +129,15 @@ function resolveLinks(
     });
   });
   return [...byStack.values()].sort((a, b) => a.stack - b.stack);
+}
+
+/** The first two links that came out with one name, null when each has its own. */
+function sameName(links: readonly Link[]): readonly [Link, Link] | null {
+  for (const [i, second] of links.entries()) {
+    const first = links.slice(0, i).find((link) => link.name === second.name);
+    if (first !== undefined) return [first, second];
+  }
+  return null;
 }
 
 function resolveLink(
@@ -133,6 +158,9 @@ function resolveLink(
     return key === 'flit_overhead' ? bytes : positive(bytes, link[key], at(key));
   };
   const transfersPerS = positive(parseTransfers(link.rate, at('rate')), link.rate, at('rate'));
+  if (transfersPerS > MOST_TRANSFERS) {
+    throw new InputError({ where: at('rate'), found: `'${link.rate}'`, expected: 'at most 1000 GT/s a lane' });
+  }
   const flitBytes = size('flit');
   const flitOverheadBytes = size('flit_overhead');
   if (flitOverheadBytes < 0 || flitOverheadBytes >= flitBytes) {
@@ -143,6 +171,14 @@ function resolveLink(
     });
   }
   const rawBytesPerS = (link.lanes * transfersPerS) / 8;
+  const flitPs = (flitBytes * 1e12) / rawBytesPerS; // both sides are exact for whole rates below 2^53 bit/s, so it is rounded once
+  if (flitPs > LONGEST_LATENCY_PS) {
+    throw new InputError({
+      where: at('rate'),
+      found: `'${link.rate}' over ${link.lanes} lanes: a flit of ${flitBytes} B takes ${formatTime(flitPs)}`,
+      expected: `at most ${formatTime(LONGEST_LATENCY_PS)} a flit`,
+    });
+  }
   return {
     name,
     die,
@@ -151,7 +187,7 @@ function resolveLink(
     transfersPerS,
     flitBytes,
     flitOverheadBytes,
-    flitPs: (flitBytes * 1e12) / rawBytesPerS, // multiplied first: a flit time of whole ps comes out whole
+    flitPs,
     requestHeaderBytes: size('request_header'),
     responseHeaderBytes: size('response_header'),
     ackBytes: size('ack'),

@@ -161,7 +161,8 @@ const link = z
   })
   .meta({ description: 'full-duplex die-to-die links from one compute die to one or more stacks' });
 
-const XOR_TARGETS = ['bank_group', 'bank', 'sid', 'channel', 'pseudo_channel'];
+export const XOR_TARGETS = ['bank_group', 'bank', 'sid', 'channel', 'pseudo_channel'];
+const BITS = '(0|[1-9]\\d*)'; // no leading zeros: one bit has one name
 const addressMap = z
   .strictObject({
     interleave: z
@@ -174,15 +175,15 @@ const addressMap = z
         'each round over the units begins at another one, by a hash of the round’s number: strides no longer meet in few units',
     }),
     fields: z
-      .array(z.string().regex(/^(column|bank_group|bank|sid|row|pseudo_channel):\d+$/, 'field:bits'))
+      .array(z.string().regex(new RegExp(`^(column|bank_group|bank|sid|row|pseudo_channel):${BITS}$`), 'field:bits'))
       .min(1)
       .meta({
         description: 'bit fields inside a unit, lowest first, as field:bits; a field may come back for its higher bits',
       }),
     xor: z
       .record(
-        z.string().regex(new RegExp(`^(${XOR_TARGETS.join('|')})\\.\\d+$`), 'field.bit'),
-        z.array(z.string().regex(/^row\.\d+$/, 'row.bit')).min(1),
+        z.string().regex(new RegExp(`^(${XOR_TARGETS.join('|')})\\.${BITS}$`), 'field.bit'),
+        z.array(z.string().regex(new RegExp(`^row\\.${BITS}$`), 'row.bit')).min(1),
       )
       .default({})
       .meta({

@@ -1,5 +1,4 @@
-import { isAlias, isMap, isScalar, isSeq, LineCounter, type Node, parseDocument } from 'yaml';
-import { InputError, type Where } from '../errors.js';
+import type { Where } from '../errors.js';
 
 /**
  * A YAML document whose every node remembers where it was written, so that a value can be traced back through `extends` and
@@ -8,7 +7,12 @@ import { InputError, type Where } from '../errors.js';
 export type Tree =
   | { readonly kind: 'map'; readonly where: Where; readonly entries: ReadonlyMap<string, Entry> }
   | { readonly kind: 'list'; readonly where: Where; readonly items: readonly Tree[] }
-  | { readonly kind: 'scalar'; readonly where: Where; readonly value: unknown };
+  | {
+      readonly kind: 'scalar';
+      readonly where: Where;
+      readonly value: unknown;
+      readonly text?: string; // a number as it was written
+    };
 
 export interface Entry {
   readonly key: Where; // where the key stands
@@ -16,72 +20,6 @@ export interface Entry {
 }
 
 export type Path = readonly (string | number)[];
-
-/** Parses YAML text; a syntax error, an unknown alias or a document that is no map is an InputError. */
-export function parseTree(text: string, file: string): Tree {
-  if (text.includes('\0')) {
-    throw new InputError({ where: { file }, found: 'a NUL byte', expected: 'a package file: YAML text' });
-  }
-  const lines = new LineCounter();
-  const document = parseDocument(text, { lineCounter: lines, uniqueKeys: true });
-  const [problem] = document.errors;
-  if (problem !== undefined) {
-    const at = problem.linePos?.[0];
-    throw new InputError({
-      where: { file, line: at?.line, column: at?.col },
-      found: problem.message.split(' at line')[0].split('\n')[0],
-      expected: 'well-formed YAML',
-    });
-  }
-  if (document.contents === null) {
-    throw new InputError({
-      where: { file },
-      found: 'an empty file',
-      expected: 'a package: a map with the keys penstock, name, compute …',
-    });
-  }
-  const place = (node: Node | null | undefined): Where => {
-    const { line, col } = lines.linePos(node?.range?.[0] ?? 0);
-    return { file, line, column: col };
-  };
-  const convert = (node: Node): Tree => {
-    const where = place(node);
-    if (isAlias(node)) {
-      const target = node.resolve(document);
-      if (target === undefined) {
-        throw new InputError({
-          where,
-          found: `alias *${node.source}`,
-          expected: 'an anchor of that name earlier in the file',
-        });
-      }
-      return convert(target);
-    }
-    if (isMap(node)) {
-      const entries = new Map<string, Entry>();
-      for (const pair of node.items) {
-        const key = String(isScalar(pair.key) ? pair.key.value : pair.key);
-        const value =
-          pair.value === null
-            ? { kind: 'scalar' as const, where: place(pair.key as Node), value: null }
-            : convert(pair.value as Node);
-        entries.set(key, { key: place(pair.key as Node), value });
-      }
-      return { kind: 'map', where, entries };
-    }
-    if (isSeq(node)) return { kind: 'list', where, items: node.items.map((item) => convert(item as Node)) };
-    return { kind: 'scalar', where, value: isScalar(node) ? node.value : null };
-  };
-  const tree = convert(document.contents as Node);
-  if (tree.kind !== 'map') {
-    throw new InputError({
-      where: tree.where,
-      found: `a ${tree.kind}`,
-      expected: 'a map with the keys penstock, name, compute …',
-    });
-  }
-  return tree;
-}
 
 /** Lays `over` on `base`: maps are merged key by key, lists of named things name by name, everything else is replaced. */
 export function merge(base: Tree, over: Tree): Tree {
@@ -118,6 +56,16 @@ export function plain(tree: Tree): unknown {
   if (tree.kind === 'scalar') return tree.value;
   if (tree.kind === 'list') return tree.items.map(plain);
   return Object.fromEntries([...tree.entries].map(([key, { value }]) => [key, plain(value)]));
+}
+
+/** The tree at a path, undefined when there is none. */
+export function subtree(tree: Tree, path: Path): Tree | undefined {
+  let at: Tree | undefined = tree;
+  for (const step of path) {
+    if (at?.kind === 'map') at = at.entries.get(String(step))?.value;
+    else at = at?.kind === 'list' ? at.items[Number(step)] : undefined;
+  }
+  return at;
 }
 
 /** Where the value at a path stands, or the nearest thing above it; with `key`, where its key stands. */
@@ -175,4 +123,9 @@ function listIndex(items: readonly Tree[], step: string | number): number {
     const name = item.kind === 'map' ? item.entries.get('name')?.value : undefined;
     return name?.kind === 'scalar' && name.value === step;
   });
+}
+
+/** Names of the items of a list, as far as they have any. */
+export function namesOf(list: Tree & { kind: 'list' }): string[] {
+  return list.items.map(nameOf).filter((name) => typeof name === 'string');
 }

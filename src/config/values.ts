@@ -36,7 +36,7 @@ export function clockPeriod(text: string, where: Where): number {
   throw new InputError({ where, found: `'${text}'`, expected: 'a clock from 1 MHz to 50 GHz' });
 }
 
-const LONGEST_LATENCY_PS = 10e6;
+export const LONGEST_LATENCY_PS = 10e6;
 
 /** A fixed latency, ps, at most 10 us: what is under way in that time has to be kept. */
 export function latency(text: string, where: Where): number {
