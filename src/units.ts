@@ -114,13 +114,14 @@ function digits(value: number): string {
 }
 
 function scaled(value: number, steps: readonly (readonly [number, string])[]): string {
-  const last = steps.length - 1;
   let at = steps.findIndex(([factor]) => Math.abs(value) >= factor);
-  if (at < 0) at = last;
-  // what rounds up to one of the next greater unit is written in that unit
-  if (at > 0 && Math.abs(Number(digits(value / steps[at][0]))) * steps[at][0] >= steps[at - 1][0]) at--;
+  if (at < 0) at = steps.length - 1;
   const [factor, unit] = steps[at];
-  return `${digits(value / factor)} ${unit}`;
+  const text = digits(value / factor);
+  const shown = Number(text) * factor;
+  // what rounds up to one of the next greater unit is written in that unit
+  if (at > 0 && Math.abs(shown) >= steps[at - 1][0]) return `${digits(shown / steps[at - 1][0])} ${steps[at - 1][1]}`;
+  return `${text} ${unit}`;
 }
 
 /** Bytes with binary prefixes. */

@@ -24,6 +24,27 @@ describe('quantities', () => {
     [units.parseLength, '32 mm', 32],
     [units.parseLength, '500 um', 0.5],
     [units.parseTemperature, '-40 C', -40],
+    [units.parseTime, '2 µs', 2e6], // the micro sign
+    [units.parseTime, '2 μs', 2e6], // the Greek letter
+    [units.parseTime, '  7   ns ', 7000],
+    [units.parseTime, '+7 ns', 7000],
+    [units.parseTime, '-7 ns', -7000], // whether less than zero makes sense is for the key to say
+    [units.parseTime, '1e300 ps', 1e300],
+    [units.parseBytes, '1 KiB', 1024],
+    [units.parseBytes, '1 kB', 1000],
+    [units.parseBytes, '3 MB', 3e6],
+    [units.parseBytes, '2 GiB', 2 ** 31],
+    [units.parseBytes, '2 TB', 2e12],
+    [units.parseBytes, '2 TiB', 2 ** 41],
+    [units.parseFrequency, '50 Hz', 50],
+    [units.parseFrequency, '3 kHz', 3000],
+    [units.parseFrequency, '900 MHz', 9e8],
+    [units.parseFlopRate, '5 GFLOP/s', 5e9],
+    [units.parseFlopRate, '1.6 PFLOP/s', 1.6e15],
+    [units.parseFlops, '0', 0],
+    [units.parseFlops, '7 FLOP', 7],
+    [units.parseFlops, '2 PFLOP', 2e15],
+    [units.parseLength, '1.2 cm', 12],
   ] as const)('%p of %s', (parse, text, value) => {
     expect(parse(text, where)).toBe(value);
   });
@@ -46,6 +67,53 @@ describe('quantities', () => {
       units.parseFlops,
       '3 FLOPS',
       "found '3 FLOPS', whose unit 'FLOPS' is not one of an amount of work; expected an amount of work with a unit (FLOP, kFLOP, MFLOP, GFLOP, TFLOP, PFLOP). Did you mean '3 FLOP'?",
+    ],
+    [
+      units.parseTime,
+      '1e300 s',
+      "found '1e300 s', beyond any number the program can hold; expected a time with a unit (ps, ns, us, ms, s)",
+    ],
+    [
+      units.parseLength,
+      '-1e400 mm',
+      "found '-1e400 mm', beyond any number the program can hold; expected a length with a unit (um, mm, cm)",
+    ],
+    [
+      units.parseFrequency,
+      '1.6 ghz',
+      "found '1.6 ghz', whose unit 'ghz' is not one of a clock frequency; expected a clock frequency with a unit (Hz, kHz, MHz, GHz). Did you mean '1.6 GHz'?",
+    ],
+    [
+      units.parseTransfers,
+      '16',
+      "found '16', a number without a unit; expected a transfer rate with a unit (MT/s, GT/s)",
+    ],
+    [
+      units.parseFlopRate,
+      '400 TFLOP',
+      "found '400 TFLOP', whose unit 'TFLOP' is not one of a compute rate; expected a compute rate with a unit (GFLOP/s, TFLOP/s, PFLOP/s). Did you mean '400 TFLOP/s'?",
+    ],
+    [units.parseTemperature, '60', "found '60', a number without a unit; expected a temperature with a unit (C)"],
+    [
+      units.parseTemperature,
+      '330 K',
+      "found '330 K', whose unit 'K' is not one of a temperature; expected a temperature with a unit (C)",
+    ],
+    [
+      units.parseBytes,
+      '64 KB',
+      "found '64 KB', whose unit 'KB' is not one of a size; expected a size with a unit (B, kB, MB, GB, TB, KiB, MiB, GiB, TiB). Did you mean '64 kB'?",
+    ],
+    [
+      units.parseTime,
+      '0x10 ns',
+      "found '0x10 ns', whose unit 'x10 ns' is not one of a time; expected a time with a unit (ps, ns, us, ms, s)",
+    ],
+    [units.parseTime, 'NaN ns', "found 'NaN ns'; expected a time with a unit (ps, ns, us, ms, s)"],
+    [
+      units.parseTime,
+      '1,5 ns',
+      "found '1,5 ns', whose unit ',5 ns' is not one of a time; expected a time with a unit (ps, ns, us, ms, s)",
     ],
     [
       units.parseTime,
@@ -98,6 +166,13 @@ describe('times to clocks', () => {
     expect(toClocks({ ck: 0, ps: 3_899_999 }, 625, 'down')).toBe(6240);
     expect(toClocks({ ck: 0, ps: 3_899_000 }, 625, 'down')).toBe(6238);
   });
+  test('the guard forgives 0.3 % of a clock and no more', () => {
+    expect(toClocks({ ck: 0, ps: 4 * 625 + 0.0029 * 625 }, 625)).toBe(4);
+    expect(toClocks({ ck: 0, ps: 4 * 625 + 0.0031 * 625 }, 625)).toBe(5);
+    expect(toClocks({ ck: 0, ps: 4 * 625 - 0.0029 * 625 }, 625, 'down')).toBe(4);
+    expect(toClocks({ ck: 0, ps: 4 * 625 - 0.0031 * 625 }, 625, 'down')).toBe(3);
+    expect(toClocks({ ck: 0, ps: 0 }, 625)).toBe(0);
+  });
   test('the greater of clocks and time', () => {
     expect(toClocks({ ck: 4, ps: 2500 }, 1000)).toBe(4);
     expect(toClocks({ ck: 4, ps: 2500 }, 500)).toBe(5);
@@ -119,6 +194,19 @@ describe('for people', () => {
     [units.formatFlops(1.57e15), '1.57 PFLOP/s'],
     [units.formatPercent(0.4076), '40.8 %'],
     [units.formatPercent(1), '100.0 %'],
+    // what rounds up to the next unit is written in it
+    [units.formatTime(999_949), '999.9 ns'],
+    [units.formatTime(999_960), '1.00 us'],
+    [units.formatTime(-999_960), '-1.00 us'],
+    [units.formatBytes(2 ** 20 - 1), '1.00 MiB'],
+    [units.formatBytes(1023 * 1024), '1023 KiB'],
+    [units.formatBandwidth(999.97e9), '1.00 TB/s'],
+    [units.formatCount(999_960), '1.00 M'],
+    [units.formatCount(9999), '9999'],
+    [units.formatCount(10_000), '10.0 k'],
+    [units.formatCount(2.5), '2.50'],
+    [units.formatTime(0.25), '0.250 ps'],
+    [units.formatBandwidth(3.2e15), '3200 TB/s'],
   ])('%s', (text, expected) => {
     expect(text).toBe(expected);
   });

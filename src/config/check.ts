@@ -4,7 +4,7 @@ import type { Path } from './tree.js';
 import type { Place } from './values.js';
 
 /** Refuses timings that contradict each other or an organisation that cannot work, naming the rule that fails. */
-export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, path: Path, place: Place): void {
+export function checkMemory({ organisation: o, timings, refresh, buses }: MemoryGroup, path: Path, place: Place): void {
   const ck = (name: TimingName): number => timings[name].ck;
   const rule = (holds: boolean, at: TimingName, text: string, ...names: TimingName[]): void => {
     if (holds) return;
@@ -54,7 +54,9 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
     });
   }
   // the longest that a row may need from its ACT until its bank is closed again: between two refreshes there must be room for it
-  const rowCycle = Math.max(ck('tRC'), ck('tRCDWR') + ck('WL') + o.burst_ck + ck('tWR') + ck('tRP'));
+  const halfBus = buses.actHalfCk + buses.preHalfCk + buses.refHalfCk + (buses.separate ? 0 : buses.columnHalfCk);
+  const busCk = (halfBus * o.pseudo_channels) / 2; // the channel's row bus, for one row and one refresh of each pseudo-channel
+  const rowCycle = Math.max(ck('tRC'), ck('tRCDWR') + ck('WL') + o.burst_ck + ck('tWR') + ck('tRP')) + busCk;
   if (refresh.mode === 'all-bank') {
     rule(
       ck('tREFI') > ck('tRFCab') + rowCycle,
@@ -73,6 +75,12 @@ export function checkMemory({ organisation: o, timings, refresh }: MemoryGroup, 
       'tREFI',
       'tRREFD',
       'tRRD_L',
+    );
+    rule(
+      ck('tREFI') / banks >= busCk,
+      'tREFI',
+      `tREFI / ${banks} banks of at least the ${busCk} ck that an ACT, a precharge and a refresh of each pseudo-channel hold the row bus`,
+      'tREFI',
     );
     if (refresh.refpbInActivateWindow) {
       rule(

@@ -75,12 +75,12 @@ export function describePackage(pkg: Package): Description {
           ]),
         ),
         rule_sources: {
-          buses: same(group.buses, device?.buses.value) ? (device?.buses.source ?? '') : 'package file',
-          activate_window_scope: device?.activateWindowScope.source ?? '',
-          refresh_scope: device?.refreshScope.source ?? '',
-          postpone: device?.postpone.source ?? '',
-          pull_in: device?.pullIn.source ?? '',
-          refpb_in_activate_window: device?.refpbInActivateWindow.source ?? '',
+          buses: sourceOf(group.buses, device?.buses),
+          activate_window_scope: sourceOf(group.activateWindowScope, device?.activateWindowScope),
+          refresh_scope: sourceOf(group.refresh.scope, device?.refreshScope),
+          postpone: sourceOf(group.refresh.postpone, device?.postpone),
+          pull_in: sourceOf(group.refresh.pullIn, device?.pullIn),
+          refpb_in_activate_window: sourceOf(group.refresh.refpbInActivateWindow, device?.refpbInActivateWindow),
         },
         stack_bytes: stackBytes({ ...group, clockPs }),
         refresh_loss: refreshLoss({ ...group, clockPs }),
@@ -92,8 +92,10 @@ export function describePackage(pkg: Package): Description {
   };
 }
 
-function same(a: object, b: object | undefined): boolean {
-  return JSON.stringify(a) === JSON.stringify(b);
+/** The source of a device's value, or the package file where that says otherwise. */
+function sourceOf<T>(value: T, device: { readonly value: T; readonly source: string } | undefined): string {
+  const same = device !== undefined && JSON.stringify(value) === JSON.stringify(device.value);
+  return same ? device.source : 'package file';
 }
 
 function frequencyOf(text: string): number {

@@ -4,8 +4,8 @@ import { InputError, nearest, SystemError, type Where } from '../errors.js';
 import { formatBytes } from '../units.js';
 import { checkPackage } from './check-package.js';
 import type { Package } from './package.js';
-import { resolve } from './resolve.js';
 import { parseTree, parseValue } from './parse-tree.js';
+import { resolve } from './resolve.js';
 import { merge, namesOf, type Tree, withValue } from './tree.js';
 import { isOpenMap, validate } from './validate.js';
 

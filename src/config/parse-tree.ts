@@ -8,22 +8,31 @@ import type { Entry, Tree } from './tree.js';
  */
 const MOST_NODES = 2 ** 17;
 const MOST_LEVELS = 32;
-const TREE_EXPECTED = 'a package: a map with the keys penstock, name, compute …';
 
-/** Parses a package file; a syntax error, an unknown alias or a document that is no map is an InputError. */
-export function parseTree(text: string, file: string): Tree {
+/** What a text should have been, for its errors. */
+export interface Expected {
+  readonly file: string; // the kind of file
+  readonly map: string; // what is in it
+}
+const PACKAGE: Expected = {
+  file: 'a package file',
+  map: 'a package: a map with the keys penstock, name, compute …',
+};
+
+/** Parses a file whose content is a map; a syntax error, an unknown alias or another document is an InputError. */
+export function parseTree(text: string, file: string, expected = PACKAGE): Tree {
   if (text.includes('\0')) {
-    throw new InputError({ where: { file }, found: 'a NUL byte', expected: 'a package file: YAML text' });
+    throw new InputError({ where: { file }, found: 'a NUL byte', expected: `${expected.file}: YAML text` });
   }
   const lines = new LineCounter();
   const tree = read(text, lines, (offset) => {
     const { line, col } = lines.linePos(offset);
     return { file, line, column: col };
   });
-  if (tree === null) throw new InputError({ where: { file }, found: 'an empty file', expected: TREE_EXPECTED });
+  if (tree === null) throw new InputError({ where: { file }, found: 'an empty file', expected: expected.map });
   if (tree.kind !== 'map') {
     const found = tree.kind === 'list' ? 'a list' : 'plain text';
-    throw new InputError({ where: tree.where, found, expected: TREE_EXPECTED });
+    throw new InputError({ where: tree.where, found, expected: expected.map });
   }
   return tree;
 }
@@ -38,12 +47,13 @@ function read(text: string, lines: LineCounter, at: (offset: number) => Where): 
   // a tag that is not known, or a directive, would be passed over: what is written would not be what is meant
   const [problem] = [...document.errors, ...document.warnings];
   if (problem !== undefined) {
-    const several = problem.code === 'MULTIPLE_DOCS';
-    throw new InputError({
-      where: at(problem.pos[0]),
-      found: several ? 'a second document behind ---' : problem.message.split(' at line')[0].split('\n')[0],
-      expected: several ? 'one document a file' : 'well-formed YAML',
-    });
+    const where = at(problem.pos[0]);
+    if (problem.message.startsWith('Maximum call stack')) throw tooMuch(at(0), 'values in very many levels');
+    if (problem.code === 'MULTIPLE_DOCS') {
+      throw new InputError({ where, found: 'a second document behind ---', expected: 'one document a file' });
+    }
+    const found = problem.message.split(' at line')[0].split('\n')[0];
+    throw new InputError({ where, found, expected: 'well-formed YAML' });
   }
   if (document.contents === null) return null;
 
@@ -81,9 +91,7 @@ function read(text: string, lines: LineCounter, at: (offset: number) => Where): 
         throw new InputError({ where: place(key ?? node), found: 'a key that is no word', expected: 'a key' });
       }
       const tree: Tree =
-        value === null
-          ? { kind: 'scalar', where: place(key), value: null }
-          : convert(value as ParsedNode, level + 1);
+        value === null ? { kind: 'scalar', where: place(key), value: null } : convert(value as ParsedNode, level + 1);
       if (name === '<<') merged.push(...mapsOf(tree));
       else if (!entries.has(name)) entries.set(name, { key: place(key), value: tree });
       else throw new InputError({ where: place(key), found: `key '${name}' twice`, expected: 'each key once' });
@@ -112,7 +120,7 @@ function tooMuch(where: Where, found: string): InputError {
   return new InputError({
     where,
     found: `${found}, aliases written out`,
-    expected: `a package file: at most ${MOST_NODES} values in ${MOST_LEVELS} levels`,
+    expected: `at most ${MOST_NODES} values in ${MOST_LEVELS} levels`,
   });
 }
 

@@ -6,7 +6,14 @@ import { TIMING_NAMES } from './package.js';
  * says its unit, its default and why. Quantities are strings with units; their units are checked when they are resolved.
  */
 
-const quantity = (text: string) => z.string().meta({ description: text });
+const quantities = new WeakSet<z.core.$ZodType>();
+const quantity = (text: string) => {
+  const type = z.string().meta({ description: text });
+  quantities.add(type);
+  return type;
+};
+/** Whether a type of this schema stands for a number with a unit. */
+export const isQuantity = (type: z.core.$ZodType): boolean => quantities.has(type);
 /** A count has an upper end because tables are sized from it: well above any device, well below what would exhaust memory. */
 const count = (text: string, most: number, least = 1) => z.int().min(least).max(most).meta({ description: text });
 
@@ -135,7 +142,7 @@ const compute = z
       .meta({ description: 'tiles that may be loading or waiting at once, the computing one included' }),
     request: quantity('longest request an engine sends').default('256 B'),
     peak: z
-      .record(z.string(), z.string())
+      .record(z.string(), quantity('peak compute rate in this number format'))
       .default({})
       .meta({ description: 'peak compute rate of the die per number format, for example bf16: 400 TFLOP/s' }),
     edge: quantity('die edge available for links, for example 32 mm').optional(),

@@ -1,7 +1,7 @@
 import type { z } from 'zod';
 import { InputError, nearest } from '../errors.js';
-import { type PackageFile, packageFile } from './schema.js';
-import { locate, type Path, plain, type Tree } from './tree.js';
+import { isQuantity, type PackageFile, packageFile } from './schema.js';
+import { locate, type Path, plain, subtree, type Tree } from './tree.js';
 
 /** Checks a document against the schema; the first thing wrong is thrown with its place. */
 export function validate(tree: Tree): PackageFile {
@@ -14,7 +14,7 @@ export function validate(tree: Tree): PackageFile {
 
 function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
   const path = issue.path as Path;
-  const found = describe(valueAt(tree, path));
+  const found = describe(subtree(tree, path));
   switch (issue.code) {
     case 'unrecognized_keys': {
       const [key] = issue.keys;
@@ -42,7 +42,7 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
       return new InputError({
         where: locate(tree, path),
         found,
-        expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${issue.maximum}`,
+        expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${mostAt(path) ?? issue.maximum}`,
       });
     case 'invalid_format':
       return new InputError({
@@ -57,52 +57,75 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
         expected: 'a field and a bit of it, for example bank_group.0',
       });
     default: {
-      const expected = 'expected' in issue ? wording(String(issue.expected)) : issue.message;
+      const expected = 'expected' in issue ? wording(String(issue.expected), path) : issue.message;
       return new InputError({ where: locate(tree, path), found, expected });
     }
   }
 }
 
 const WORDS: Readonly<Record<string, string>> = {
-  string: 'text; quantities are written with their unit, for example 14 ns',
+  string: 'text',
   int: 'a whole number',
-  number: 'a number',
+  number: 'a whole number', // the schema has no others
   object: 'a map of keys',
   array: 'a list',
   record: 'a map of keys',
+  boolean: 'true or false',
 };
-const wording = (expected: string): string => WORDS[expected] ?? expected;
 
-function describe(value: unknown): string {
-  if (value === undefined) return 'nothing';
-  if (value === null) return 'an empty value';
-  if (Array.isArray(value)) return `a list of ${value.length}`;
-  if (typeof value === 'object') return 'a map';
-  return typeof value === 'string' ? `'${value}'` : String(value);
+/** What kind of value would do, and what the schema says of it. */
+function wording(expected: string, path: Path): string {
+  const type = typeAt(path);
+  const kind =
+    type !== undefined && isQuantity(unwrap(type)) ? 'a quantity with its unit' : (WORDS[expected] ?? expected);
+  const about = type === undefined ? undefined : descriptionOf(type);
+  return about === undefined ? kind : `${kind}: ${about}`;
 }
 
-function valueAt(tree: Tree, path: Path): unknown {
-  let at: unknown = plain(tree);
-  for (const step of path) at = (at as Record<string | number, unknown> | undefined | null)?.[step];
+function describe(tree: Tree | undefined): string {
+  if (tree === undefined) return 'nothing';
+  if (tree.kind === 'list') return `a list of ${tree.items.length}`;
+  if (tree.kind === 'map') return 'a map';
+  if (tree.value === null) return 'an empty value';
+  return typeof tree.value === 'string' ? `'${tree.value}'` : (tree.text ?? String(tree.value));
+}
+
+/** The keys the schema knows at a path. */
+export function keysAt(path: Path): string[] {
+  const type = typeAt(path);
+  return type === undefined ? [] : Object.keys(partsOf(type).shape ?? {});
+}
+
+/** Whether a path leads to a map whose keys are the user's own. */
+export function isOpenMap(path: Path): boolean {
+  const type = typeAt(path);
+  return type !== undefined && partsOf(type).valueType !== undefined;
+}
+
+/** The greatest number the schema takes at a path; for one beyond all whole numbers the issue would name another limit. */
+function mostAt(path: Path): number | undefined {
+  const type = typeAt(path);
+  return type === undefined ? undefined : ((unwrap(type) as z.ZodNumber).maxValue ?? undefined);
+}
+
+interface Parts {
+  readonly shape?: Readonly<Record<string, z.core.$ZodType>>;
+  readonly element?: z.core.$ZodType;
+  readonly valueType?: z.core.$ZodType;
+}
+const partsOf = (type: z.core.$ZodType): Parts => unwrap(type)._zod.def as Parts;
+
+function typeAt(path: Path): z.core.$ZodType | undefined {
+  let at: z.core.$ZodType | undefined = packageFile;
+  for (const step of path) {
+    const { shape, element, valueType }: Parts = partsOf(at);
+    at = shape !== undefined && Object.hasOwn(shape, step) ? shape[step] : (element ?? valueType);
+    if (at === undefined) return undefined;
+  }
   return at;
 }
 
-/** The keys the schema knows at a path; the wrappers of defaults and options are looked through. */
-export function keysAt(path: Path): string[] {
-  let at: z.core.$ZodType | undefined = packageFile;
-  for (const step of path) {
-    const def = unwrap(at)._zod.def as {
-      shape?: Record<string, z.core.$ZodType>;
-      element?: z.core.$ZodType;
-      valueType?: z.core.$ZodType;
-    };
-    at = def.shape?.[String(step)] ?? def.element ?? def.valueType;
-    if (at === undefined) return [];
-  }
-  const def = unwrap(at)._zod.def as { shape?: Record<string, unknown> };
-  return Object.keys(def.shape ?? {});
-}
-
+/** The type below the wrappers of defaults and options. */
 function unwrap(type: z.core.$ZodType): z.core.$ZodType {
   let at = type;
   for (;;) {
@@ -110,4 +133,8 @@ function unwrap(type: z.core.$ZodType): z.core.$ZodType {
     if (inner === undefined) return at;
     at = inner;
   }
+}
+
+function descriptionOf(type: z.core.$ZodType): string | undefined {
+  return (type as z.ZodType).description ?? (unwrap(type) as z.ZodType).description;
 }

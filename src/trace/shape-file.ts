@@ -1,5 +1,6 @@
 /** The shape of a captured trace kept in a YAML file: columns, ops, delimiter, clock. */
-import { locate, parseTree, plain } from '../config/tree.js';
+import { parseTree } from '../config/parse-tree.js';
+import { locate, plain } from '../config/tree.js';
 import { InputError, nearest, type Where } from '../errors.js';
 import type { ShapeText } from './shape.js';
 
@@ -21,11 +22,8 @@ export interface ShapeFile {
  *     clock: 1.7 GHz
  */
 export function shapeFile(text: string, file: string): ShapeFile {
-  const tree = parseTree(text, file);
-  const content = plain(tree);
-  if (typeof content !== 'object' || content === null || Array.isArray(content))
-    throw new InputError({ where: { file }, found: 'no mapping', expected: `some of ${KEYS.join(', ')}` });
-  const parts = content as Record<string, unknown>;
+  const tree = parseTree(text, file, { file: 'a file of columns and ops', map: `some of ${KEYS.join(', ')}` });
+  const parts = plain(tree) as Record<string, unknown>; // parseTree gives nothing but a map
   for (const key of Object.keys(parts)) {
     if (KEYS.some((known) => known === key)) continue;
     const like = nearest(key, KEYS);
