@@ -1,10 +1,11 @@
-import { mkdtempSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
+import { mkdirSync, mkdtempSync, readdirSync, readFileSync, rmSync, symlinkSync, writeFileSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { afterAll, beforeAll, describe, expect, it, test } from 'vitest';
 import { describePackage, loadPackage, packageJsonSchema, parsePackage } from '../../src/config/index.js';
 import { TIMING_NAMES } from '../../src/config/package.js';
+import { InputError, SystemError } from '../../src/errors.js';
 
 const CONFIGS = fileURLToPath(new URL('../../configs/', import.meta.url));
 const WAGTAIL = join(CONFIGS, 'wagtail.yaml');
@@ -47,6 +48,129 @@ describe('extends', () => {
     write('good.yaml', readFileSync(WAGTAIL, 'utf8'));
     const bad = write('bad.yaml', 'extends: good.yaml\n\nmemory:\n  - { name: hbm, stacks: none }\n');
     expect(() => loadPackage(bad)).toThrow(/bad\.yaml:4:26: memory\.0\.stacks: found 'none'/);
+    // the base is at fault, three files away
+    write('worse.yaml', readFileSync(WAGTAIL, 'utf8').replace('stacks: 6', 'stacks: -6'));
+    write('above.yaml', 'extends: worse.yaml\n');
+    expect(() => loadPackage(write('top2.yaml', '\n\nextends: above.yaml\nname: Top\n'))).toThrow(
+      /worse\.yaml:\d+:13: memory\.0\.stacks: found -6; expected at least 1$/,
+    );
+    // and what only the two together make wrong stands where the upper one said it
+    const both = write('both.yaml', 'extends: good.yaml\nmemory:\n  - name: hbm\n    stacks: 7\n');
+    expect(() => loadPackage(both)).toThrow(/good\.yaml:\d+:3: links: found no link to stack hbm\.6/);
+  });
+  it('finds the base beside the file that names it, or by an absolute path', () => {
+    mkdirSync(join(folder, 'deep', 'er'), { recursive: true });
+    write('root.yaml', readFileSync(WAGTAIL, 'utf8'));
+    write('deep/middle.yaml', 'extends: ../root.yaml\nname: Middle\n');
+    const relative = write('deep/er/top.yaml', 'extends: ../middle.yaml\n');
+    expect(loadPackage(relative).name).toBe('Middle');
+    expect(parsePackage(readFileSync(relative, 'utf8'), relative).name).toBe('Middle');
+    expect(loadPackage(write('absolute.yaml', `extends: ${join(folder, 'root.yaml')}\n`)).name).toBe('Wagtail');
+  });
+  it('replaces a list of things without names, and adds things of a new name', () => {
+    write('plain.yaml', readFileSync(WAGTAIL, 'utf8'));
+    const other = loadPackage(
+      write('other.yaml', 'extends: plain.yaml\naddress_map: { interleave: [stack, channel, pseudo_channel] }\n'),
+    );
+    expect(other.addressMap.interleave).toEqual(['stack', 'channel', 'pseudo_channel']);
+    expect(other.addressMap.xor).toHaveLength(4);
+    const more = write(
+      'more.yaml',
+      `extends: plain.yaml
+compute: [{ name: north, clock: 2 GHz, engines: 1 }]
+memory: [{ name: hbm, stacks: 7 }]
+links: [{ name: north, from: north, to: hbm.6, lanes: 64, rate: 16 GT/s }]
+`,
+    );
+    expect(loadPackage(more).dies.map((die) => die.name)).toEqual(['west', 'east', 'north']);
+  });
+});
+
+describe('YAML', () => {
+  const text = readFileSync(WAGTAIL, 'utf8');
+  it('anchors, aliases and merge keys say a thing once', () => {
+    const short = text.replace(/ {2}- name: west\n[\s\S]*?(?=\nmemory:)/, '').replace(
+      'compute:\n',
+      `compute:
+  - &die
+    name: west
+    clock: 1.6 GHz
+    engines: 32
+    window: 256
+    buffering: 3
+    request: 256 B
+    peak: { fp8: 1600 TFLOP/s, bf16: 800 TFLOP/s, fp32: 100 TFLOP/s }
+    edge: 32 mm
+  - { name: east, <<: *die }
+`,
+    );
+    expect(parsePackage(short, 'a.yaml').hash).toBe(parsePackage(text, 'a.yaml').hash);
+    // a key of its own counts, wherever it stands; of several maps the first that has a key
+    const own = short.replace('{ name: east, <<: *die }', '{ <<: [{ engines: 7 }, *die], name: east, window: 5 }');
+    expect(parsePackage(own, 'a.yaml').dies[1]).toMatchObject({ name: 'east', window: 5, engines: 7, buffering: 3 });
+    // what is wrong in a merged map stands at the anchor
+    expect(() => parsePackage(short.replace('window: 256', 'window: 0'), 'a.yaml')).toThrow(
+      /^a\.yaml:\d+:13: compute\.0/,
+    );
+  });
+  it('a byte order mark, carriage returns and comments change nothing', () => {
+    const { hash } = parsePackage(text, 'a.yaml');
+    expect(parsePackage(`\uFEFF${text}`, 'a.yaml').hash).toBe(hash);
+    expect(parsePackage(text.replaceAll('\n', '\r\n'), 'a.yaml').hash).toBe(hash);
+    // and places are counted in the lines of the file
+    expect(() => parsePackage(text.replace('stacks: 6', 'stacks: 0').replaceAll('\n', '\r\n'), 'a.yaml')).toThrow(
+      `a.yaml:${text.slice(0, text.indexOf('stacks: 6')).split('\n').length}:13: memory.0.stacks`,
+    );
+  });
+});
+
+describe('files', () => {
+  it('that cannot be read are no fault of the user’s input', () => {
+    symlinkSync('loop.yaml', join(folder, 'loop.yaml'));
+    expect(() => loadPackage(join(folder, 'loop.yaml'))).toThrow(SystemError);
+    expect(() => loadPackage(join(folder, 'loop.yaml'))).toThrow(/loop\.yaml: cannot be read \(ELOOP\)$/);
+  });
+  it('below something that is no folder, or taken for packages by mistake', () => {
+    const file = write('file.yaml', 'name: x\n');
+    expect(() => loadPackage(join(file, 'below.yaml'))).toThrow(/below\.yaml: found no such file/);
+    const huge = write('huge.csv', 'R,0,64\n'.repeat(1_000_000));
+    const began = performance.now();
+    expect(() => loadPackage(huge)).toThrow(/huge\.csv: found a file of more than 4\.00 MiB; expected a package file/);
+    expect(() => loadPackage(write('on.yaml', 'extends: huge.csv\n'))).toThrow(
+      /on\.yaml:1:10: extends: found '.*huge\.csv', a file of more than 4\.00 MiB/,
+    );
+    expect(() => loadPackage(write('in.yaml', 'extends: .\n'))).toThrow(
+      /in\.yaml:1:10: extends: found '.*', a directory/,
+    );
+    expect(performance.now() - began).toBeLessThan(2000);
+    expect(() => loadPackage(write('null.yaml', 'a: b\0'))).toThrow(InputError);
+  });
+});
+
+describe('overrides', () => {
+  const text = readFileSync(WAGTAIL, 'utf8');
+  const set = (...overrides: string[]) => parsePackage(text, 'a.yaml', overrides);
+  it('name list items by number or name, and take any YAML value', () => {
+    expect(set('compute.1.window=7').dies.map((die) => die.window)).toEqual([256, 7]);
+    expect(set('compute.east.window=7').dies.map((die) => die.window)).toEqual([256, 7]);
+    expect(set('memory.hbm.refresh={ mode: "off" }').memory[0].refresh.mode).toBe('off');
+    expect(set('memory.hbm.refresh.mode=off').memory[0].refresh.mode).toBe('off');
+    expect(set('links.west.rate=32 GT/s').links[0].transfersPerS).toBe(32e9);
+    expect(set('caution=a = b').caution).toBe('a = b');
+    expect(set('caution=""').caution).toBe('');
+  });
+  it('reach keys that have dots in them', () => {
+    expect(
+      set('address_map.xor.bank.0=[row.9]').addressMap.xor.find((f) => f.target === 'bank' && f.bit === 0),
+    ).toEqual({
+      target: 'bank',
+      bit: 0,
+      rowBits: [9],
+    });
+    expect(set('compute.west.peak.fp8.e4m3=2 TFLOP/s').dies[0].peakFlops['fp8.e4m3']).toBe(2e12);
+  });
+  it('go in order, the last one counting', () => {
+    expect(set('compute.0.window=7', 'compute.0.window=9').dies[0].window).toBe(9);
   });
 });
 
@@ -59,6 +183,12 @@ describe('resolving', () => {
       .replace(/#.*$/gm, '')
       .concat('\nname: Wagtail\n');
     expect(parsePackage(turned, 'b.yaml').hash).toBe(plain.hash);
+    const peaks = text.replaceAll('{ fp8: 1600 TFLOP/s, bf16: 800 TFLOP/s,', '{ bf16: 800 TFLOP/s, fp8: 1.6 PFLOP/s,');
+    expect(peaks).not.toBe(text);
+    expect(parsePackage(peaks, 'b.yaml').hash).toBe(plain.hash);
+    const folds = text.replace(/( {4}bank_group.0: .*\n)( {4}bank_group.1: .*\n)/, '$2$1');
+    expect(folds).not.toBe(text);
+    expect(parsePackage(folds, 'b.yaml')).toEqual({ ...plain, file: 'b.yaml' });
     expect(parsePackage(text, 'a.yaml', ['memory.0.stacks=6']).hash).toBe(plain.hash);
     expect(parsePackage(text, 'a.yaml', ['memory.hbm.controller.hit_cap=33']).hash).not.toBe(plain.hash);
   });
@@ -83,6 +213,44 @@ describe('resolving', () => {
     const at = (temperature: string) =>
       parsePackage(text, 'a.yaml', [`memory.0.refresh.temperature=${temperature}`]).memory[0].timings.tREFI.ck;
     expect([at('85 C'), at('85.1 C')]).toEqual([6240, 3120]);
+  });
+  it('rounds the time of a flit once, so that whole times come out whole', () => {
+    const flitPs = (lanes: number, rate: string, flit: string): number =>
+      parsePackage(text, 'a.yaml', [`links.0.lanes=${lanes}`, `links.0.rate=${rate}`, `links.0.flit=${flit}`]).links[0]
+        .flitPs;
+    expect(flitPs(512, '16 GT/s', '256 B')).toBe(250);
+    expect(flitPs(48, '32 GT/s', '192 B')).toBe(1000);
+    // against whole-number arithmetic: bytes x 8e12 / (lanes x rate), to the nearest double
+    for (const [lanes, rate, flit] of [
+      [3, 7e9, 64],
+      [36, 11e9, 68],
+      [65535, 999_983e6, 65536],
+      [7, 1_234_567_891, 211],
+    ] as const) {
+      const [over, under] = [BigInt(flit) * 8_000_000_000_000n, BigInt(lanes) * BigInt(rate)];
+      const got = flitPs(lanes, `${rate / 1e6} MT/s`, `${flit} B`);
+      // 2^70 times the value, exactly, and how far the double is from it: at most half of its last bit
+      const exact = (over << 70n) / under;
+      const bits = 2 ** (Math.floor(Math.log2(got)) - 52);
+      const apart = exact - BigInt(got * 2 ** 60) * 1024n;
+      expect(Math.abs(Number(apart)) / 2 ** 70).toBeLessThanOrEqual(bits / 2 + 2 ** -60);
+    }
+  });
+  it('names the package file as source of every rule that it overrides', () => {
+    const rules = [
+      'memory.0.activate_window_scope=sid',
+      'memory.0.refresh={ scope: sid, postpone: 3, pull_in: 2 }',
+      'memory.0.command_buses={ act: 3 ck }',
+    ];
+    const [plain] = describePackage(loadPackage(WAGTAIL)).memory;
+    const [over] = describePackage(loadPackage(WAGTAIL, rules)).memory;
+    for (const [rule, source] of Object.entries(over.rule_sources)) {
+      expect([rule, source]).toEqual([
+        rule,
+        rule === 'refpb_in_activate_window' ? plain.rule_sources[rule] : 'package file',
+      ]);
+      expect(plain.rule_sources[rule]).not.toBe('package file');
+    }
   });
   it('describes capacity, peaks and ceilings by hand', () => {
     const pkg = loadPackage(WAGTAIL);
