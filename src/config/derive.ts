@@ -44,8 +44,12 @@ export function requestBytes(pkg: Package, die: number): number {
   return Math.min(pieceBytes(pkg), pkg.dies[die].requestBytes);
 }
 
-/** Unloaded latency of a one-atom read, ps by stage, for each state the row may be found in. */
+/**
+ * Unloaded latency of a one-atom read, ps by stage, for each state the row may be found in. A request is taken by a controller
+ * at a DRAM clock and its answer by a die at its own clock; what it waits for these edges depends on when it was sent.
+ */
 export interface UnloadedLatency {
+  readonly clock_edges: number; // the most that both edges add to any total
   readonly down_link_transit: number;
   readonly bank_preparation: { readonly hit: number; readonly closed: number; readonly conflict: number };
   readonly data_transfer: number;
@@ -56,12 +60,15 @@ export interface UnloadedLatency {
 export function unloadedLatency(pkg: Package, link: Link): UnloadedLatency {
   const [memory] = pkg.memory;
   const ps = (name: TimingName): number => memory.timings[name].ck * memory.clockPs;
-  const down = Math.ceil(link.flitPs) + link.latencyPs + memory.baseDie.ingressPs;
-  const up = memory.baseDie.egressPs + Math.ceil(link.flitPs) + link.latencyPs;
+  const flits = (bytes: number): number => Math.ceil(bytes / (link.flitBytes - link.flitOverheadBytes));
+  const onLink = (bytes: number): number => Math.ceil(flits(bytes) * link.flitPs) + link.latencyPs;
+  const down = onLink(link.requestHeaderBytes) + memory.baseDie.ingressPs;
+  const up = memory.baseDie.egressPs + onLink(link.responseHeaderBytes + memory.organisation.atom_bytes);
   const data = Math.ceil(ps('RL') + memory.organisation.burst_ck * memory.clockPs);
   const preparation = { hit: 0, closed: Math.ceil(ps('tRCDRD')), conflict: Math.ceil(ps('tRP') + ps('tRCDRD')) };
   const total = (state: number): number => down + state + data + up;
   return {
+    clock_edges: Math.ceil(memory.clockPs + pkg.dies[link.die].clockPs),
     down_link_transit: down,
     bank_preparation: preparation,
     data_transfer: data,

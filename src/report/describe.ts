@@ -26,7 +26,7 @@ export function descriptionReport(description: Description, style: TextStyle): s
     `\n${chalk.bold('Compute dies')}\n${dies(description)}`,
     ...description.memory.map((memory) => memorySection(memory, paint)),
     `\n${chalk.bold('Links')}\n${links(description)}`,
-    `\n${chalk.bold('Unloaded latency of a one-atom read')}\n${latency(description)}`,
+    `\n${chalk.bold('Unloaded latency of a one-atom read')}${chalk.dim(edges(description))}\n${latency(description)}`,
     `\n${chalk.bold('Address map')}\n${addressMap(description, paint)}`,
   ];
   return `${sections.join('\n')}\n`;
@@ -111,6 +111,12 @@ function links({ links: all, compute }: Description): string {
     formatTime(link.latencyPs),
   ]);
   return table(['link', 'joins', 'lanes', 'raw', 'payload', 'read', 'write', 'latency'], rows, [1]);
+}
+
+/** What the latencies leave out: waiting for the next clock edge. */
+function edges({ links: all }: Description): string {
+  const most = Math.max(...all.map((link) => link.unloaded_latency_ps.clock_edges));
+  return `, and up to ${formatTime(most)} to meet DRAM and compute clock edges`;
 }
 
 function latency({ links: all }: Description): string {

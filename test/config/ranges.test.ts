@@ -35,7 +35,11 @@ const override = fc.oneof(
   die('window', spread(1, 3000)),
   die('issue_per_clock', spread(1, 16)),
   die('buffering', spread(1, 64)),
-  die('request', spread(1, 2048).map((atoms) => 32 * atoms), ' B'),
+  die(
+    'request',
+    spread(1, 2048).map((atoms) => 32 * atoms),
+    ' B',
+  ),
   key('memory.0.device', of('hbm2-1.8', 'hbm3-6.4')),
   key('memory.0.clock', spread(100, 50_000), ' MHz'),
   controller('read_queue', spread(1, 4096)),
@@ -88,7 +92,7 @@ const shape = fc
     rowBits: fc.integer({ min: 0, max: 14 }),
     columnBits: fc.integer({ min: 0, max: 6 }),
     burst_ck: of(1, 2, 4),
-    atom_bytes: of(32, 64, 48, 1),
+    atom_bytes: of(8, 32, 48, 64),
   })
   .map(({ rowBits, columnBits, ...o }) => {
     const bits = { column: columnBits, bank_group: o.bank_groups, bank: o.banks_per_group, sid: o.sids, row: rowBits };
@@ -153,7 +157,6 @@ it('a package of any values in range is refused as an InputError, or runs to its
           refused++;
           return;
         }
-        const began = performance.now();
         const limit = { signal: AbortSignal.timeout(20_000) };
         const { recording } = await simulate(pkg, accessTrace(rows(pkg, seed)), limit);
         expect(recording.partial).toBe(false);
@@ -163,13 +166,11 @@ it('a package of any values in range is refused as an InputError, or runs to its
           expect(kernels.recording.partial).toBe(false);
           expect(kernels.recording.checks.filter((check) => !check.ok)).toEqual([]);
         }
-        if (process.env.SLOW && performance.now() - began > 3000) console.log(performance.now() - began, device, changes);
         ran++;
       },
     ),
-    { seed: Number(process.env.SEED ?? 5), numRuns: Number(process.env.RUNS ?? 150), interruptAfterTimeLimit: 540000 },
+    { seed: 5, numRuns: 120 },
   );
-  console.log({ ran, refused });
   expect(ran).toBeGreaterThan(50);
   expect(refused).toBeGreaterThan(20);
-}, 600_000);
+}, 240_000);

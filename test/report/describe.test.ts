@@ -1,7 +1,9 @@
 import { describe, expect, test } from 'vitest';
 import { describePackage, loadPackage } from '../../src/config/index.js';
 import { TIMING_NAMES } from '../../src/config/package.js';
+import { STAGES } from '../../src/engine/index.js';
 import { descriptionReport } from '../../src/report/index.js';
+import { accessTrace, type Row, simulate } from '../helpers/engine.js';
 import { smallPackage } from '../helpers/packages.js';
 
 const text = (...overrides: string[]): string =>
@@ -42,6 +44,31 @@ describe('description of a package', () => {
     expect(all).toContain('column.0-2 at 5-7');
     expect(all).toContain('row.0-13');
     expect(all).toContain('hit / closed / conflict');
+  });
+
+  test('unloaded latency is what a lone read then takes, to within the clock edges', async () => {
+    for (const overrides of [
+      [],
+      ['links.0.lanes=8', 'links.0.flit=32 B', 'links.0.flit_overhead=2 B'], // 48 B of answer in two flits of 30 B
+      ['links.0.request_header=700 B', 'compute.0.clock=0.7 GHz', 'memory.0.clock=1.1 GHz'],
+      ['links.0.latency=0 ns', 'memory.0.base_die={ ingress: 0.3 ns, egress: 17 ns }', 'links.0.flit=64 B'],
+    ]) {
+      const pkg = smallPackage(...overrides);
+      const { total, clock_edges: edges } = describePackage(pkg).links[0].unloaded_latency_ps;
+      const { samples } = await simulate(
+        pkg,
+        // a closed row, the same row, another row of that bank, each when all is quiet
+        accessTrace(
+          [0, 32, 2 ** 20].map((address): Row => ({ op: 'R', address, bytes: 32, engine: 0, after: address && 1 })),
+        ),
+        { keepSamples: true },
+      );
+      const took = samples.map((sample) => STAGES.reduce((sum, stage) => sum + sample[stage], 0) - sample.window_wait);
+      for (const [i, state] of (['closed', 'hit', 'conflict'] as const).entries()) {
+        expect(took[i]).toBeGreaterThanOrEqual(total[state]);
+        expect(took[i]).toBeLessThanOrEqual(total[state] + edges);
+      }
+    }
   });
 
   test('follows overrides', () => {
