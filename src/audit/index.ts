@@ -9,8 +9,9 @@
  */
 export { COMMANDS, type CommandName } from './commands.js';
 export type { Violation } from './findings.js';
+export { auditLines } from './lines.js';
 export { createLogReader, type LogReader, type LogSink } from './read-log.js';
-export { type AuditReport, auditLines } from './report.js';
+export type { AuditedRule, AuditReport } from './report.js';
 export { RULE_NAMES, RULES, type RuleName } from './rule-names.js';
 export { type Audit, createAudit } from './rules.js';
 export type { LoggedCommand } from './shape.js';

@@ -78,8 +78,9 @@ class Checker implements Audit {
   private readonly ends: Float64Array; // half clocks of each pseudo-channel's last command; -1: none
   private readonly counts = new Float64Array(COMMANDS.length);
   private commands = 0;
+  private start = Number.POSITIVE_INFINITY; // half clocks of the earliest command
 
-  constructor(pkg: Package) {
+  constructor(private readonly pkg: Package) {
     const [memory] = pkg.memory;
     this.shape = new Shape(memory.organisation);
     this.limits = limits(memory);
@@ -110,6 +111,7 @@ class Checker implements Audit {
   ): void {
     this.commands++;
     this.counts[command]++;
+    if (halfCk < this.start) this.start = halfCk;
     const { shape, findings } = this;
     const o = shape.organisation;
     const misplaced = outOfRange(
@@ -155,7 +157,9 @@ class Checker implements Audit {
 
   finish(endHalfCk?: number): AuditReport {
     for (let p = 0; p < this.shape.pseudoChannels; p++) this.pace.finish(p, Math.max(this.ends[p], endHalfCk ?? 0));
-    return makeReport(this.commands, this.counts, Math.max(0, endHalfCk ?? 0, ...this.channelTime) / 2, this.findings);
+    const end = Math.max(0, endHalfCk ?? 0, ...this.channelTime);
+    const counted = { commands: this.commands, byCommand: this.counts, startCk: this.start / 2, endCk: end / 2 };
+    return makeReport(this.pkg, counted, this.findings);
   }
 
   /** Everything the command must find: banks `first` up to `end` of pseudo-channel p are those it goes to. */

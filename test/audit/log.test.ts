@@ -69,16 +69,35 @@ describe('addresses out of range', () => {
 });
 
 describe('report', () => {
-  test('a clean log is one line', () => {
-    expect(auditLines(audit(pkg, [cmd(0, 'ACT'), cmd(8, 'RD')]))).toEqual([
-      `2 commands up to ck 8: no rule broken (${RULE_NAMES.length} rules).`,
+  test('a clean log: how many commands of each kind, over what time, against how many rules', () => {
+    const clean = audit(pkg, [cmd(2, 'ACT'), cmd(10, 'RD'), cmd(20, 'RD')]);
+    // two command buses, not one; refresh off, so no pace to keep
+    const apart = ['command bus', 'refresh gap', 'refresh owed', 'refresh ahead'];
+    expect(auditLines(clean)).toEqual([
+      `3 commands from ck 2 to ck 20 (18.0 ns): none breaks any of ${RULE_NAMES.length - apart.length} rules.`,
+      '1 ACT, 2 RD.',
     ]);
+    expect(clean.rules.filter(({ checked }) => !checked).map(({ rule }) => rule)).toEqual([
+      ...apart.slice(1),
+      apart[0],
+    ]);
+    const other = device({ buses: { separate: false }, refresh: { mode: 'per-bank' } });
+    expect(
+      audit(other, [])
+        .rules.filter(({ checked }) => !checked)
+        .map(({ rule }) => rule),
+    ).toEqual(['row bus', 'column bus']);
+  });
+
+  test('without a command', () => {
+    expect(auditLines(audit(pkg, []))).toEqual(['0 commands from ck 0 to ck 0 (0 ps): none breaks any of 31 rules.']);
   });
 
   test('what came, what it broke, what it is counted from', () => {
     const lines = auditLines(audit(pkg, [cmd(0, 'ACT'), cmd(7, 'RD'), cmd(20, 'RD', '0.1.0'), cmd(40, 'PRE')]));
     expect(lines).toEqual([
-      '2 violations of 2 rules in 4 commands up to ck 40.',
+      '2 violations of 2 rules in 4 commands from ck 0 to ck 40 (40.0 ns).',
+      '1 ACT, 2 RD, 1 PRE.',
       '',
       '            1  tRCDRD         ACT to RD, same bank',
       '            1  no open row    column command to a bank without an open row',
@@ -103,7 +122,14 @@ describe('report', () => {
     ]);
     expect(report.kept).toHaveLength(101);
     expect(report.kept[100]).toMatchObject({ rule: 'tRRD_S', command: { line: 303 } });
-    expect(auditLines(report, 3).at(-1)).toBe('... and 299 more.');
+    const lines = auditLines(report, 3);
+    expect(lines.at(-1)).toBe('... and 299 more.');
+    // of three, one is the only one of its rule, wherever it stands
+    expect(lines.filter((line) => line.startsWith('line')).map((line) => Number(line.split(/[ :]+/)[1]))).toEqual([
+      2, 3, 303,
+    ]);
+    expect(auditLines(report, 0).at(-1)).toBe('... and 302 more.');
+    expect(auditLines(report, 1000).at(-1)).toBe('... and 201 more.');
   });
 
   test('lines fit 100 columns, however large the numbers', () => {
@@ -126,8 +152,12 @@ describe('report', () => {
       format: 'penstock-audit',
       version: 1,
       ok: false,
+      partial: false,
+      package: { name: 'test', file: 'test.yaml', hash: '' },
       commands: 2,
+      start_ck: 0,
       end_ck: 7,
+      span_ps: 7 * 1000,
       violations: 1,
     });
     expect(report.commands_by_name).toMatchObject({ ACT: 1, RD: 1, WR: 0 });
