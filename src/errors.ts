@@ -24,16 +24,31 @@ export class InputError extends Error {
   readonly hint: string | undefined;
 
   constructor({ where, found, expected, hint }: InputProblem) {
-    const place = [where.file, where.line, where.line === undefined ? undefined : where.column]
+    const place = [visible(where.file), where.line, where.line === undefined ? undefined : where.column]
       .filter((part) => part !== undefined)
       .join(':');
-    const path = where.path === undefined ? '' : `${where.path}: `;
-    super(`${place}: ${path}found ${found}; expected ${expected}${hint === undefined ? '' : `. ${hint}`}`);
+    const path = where.path === undefined ? '' : `${shown(where.path)}: `;
+    super(
+      `${place}: ${path}found ${shown(found)}; expected ${visible(expected)}${hint === undefined ? '' : `. ${shown(hint)}`}`,
+    );
     this.where = where;
     this.found = found;
     this.expected = expected;
     this.hint = hint;
   }
+}
+
+/** Text of the user's with control characters written out, so that a message is one line and a terminal is told nothing by it. */
+function visible(text: string): string {
+  return text.replace(/\p{Cc}/gu, (character) => `\\x${character.charCodeAt(0).toString(16).padStart(2, '0')}`);
+}
+
+const MOST_SHOWN = 400; // characters; the ends say most: what the value begins with, and what is wrong with it
+
+/** The same, with the middle left out where it is long. */
+function shown(text: string): string {
+  if (text.length <= MOST_SHOWN) return visible(text);
+  return visible(`${text.slice(0, MOST_SHOWN / 2)}…${text.slice(-MOST_SHOWN / 2)}`);
 }
 
 /** The program's own checks failed (exit code 3): its results must not be used. */

@@ -10,6 +10,12 @@ import { merge, namesOf, type Tree, withValue } from './tree.js';
 import { isOpenMap, validate } from './validate.js';
 
 const MOST_TEXT = 2 ** 22; // bytes of a package file
+const NO_FILE: ReadonlySet<string> = new Set([
+  'ENOENT',
+  'ENOTDIR',
+  'ENAMETOOLONG',
+  'ERR_INVALID_ARG_VALUE', // a NUL in the name
+]);
 
 /**
  * Loads a package file with everything it extends, and lays overrides (`path=value`, list items by number or name) over it.
@@ -46,10 +52,10 @@ function loadTree(file: string, chain: readonly string[], from?: Where): Tree {
 function extended(tree: Tree, file: string, chain: readonly string[]): Tree {
   const base = tree.kind === 'map' ? tree.entries.get('extends')?.value : undefined;
   if (base === undefined) return tree;
-  if (base.kind !== 'scalar' || typeof base.value !== 'string') {
+  if (base.kind !== 'scalar' || typeof base.value !== 'string' || base.value === '') {
     throw new InputError({
       where: { ...base.where, path: 'extends' },
-      found: 'something other than a file name',
+      found: base.kind === 'scalar' && base.value === '' ? "''" : 'something other than a file name',
       expected: 'the name of a package file',
     });
   }
@@ -79,7 +85,7 @@ function readText(file: string, from?: Where): string {
   } catch (error) {
     if (error instanceof InputError) throw error;
     const { code } = error as NodeJS.ErrnoException;
-    if (code === 'ENOENT' || code === 'ENOTDIR') {
+    if (code !== undefined && NO_FILE.has(code)) {
       throw new InputError({
         where,
         found: from ? `'${file}', a file that does not exist` : 'no such file',

@@ -17,6 +17,9 @@ export const isQuantity = (type: z.core.$ZodType): boolean => quantities.has(typ
 /** A count has an upper end because tables are sized from it: well above any device, well below what would exhaust memory. */
 const count = (text: string, most: number, least = 1) => z.int().min(least).max(most).meta({ description: text });
 
+/** Words that reports repeat on a line: no line ends, and nothing a terminal would take for a command. */
+const line = () => z.string().regex(/^\P{Cc}*$/u, 'text without line ends or other control characters');
+
 const organisation = z
   .strictObject({
     channels: count('channels of one stack', 256).optional(),
@@ -95,7 +98,7 @@ const controller = z
 
 const memory = z
   .strictObject({
-    name: z.string().min(1).meta({ description: 'name that links refer to' }),
+    name: line().min(1).meta({ description: 'name that links refer to' }),
     device: z.string().meta({ description: 'device preset, for example hbm3-6.4' }),
     stacks: count('stacks of this memory', 1024),
     clock: quantity('DRAM clock frequency; default: the device’s').optional(),
@@ -129,7 +132,7 @@ const memory = z
 
 const compute = z
   .strictObject({
-    name: z.string().min(1).meta({ description: 'name that links and traces refer to' }),
+    name: line().min(1).meta({ description: 'name that links and traces refer to' }),
     clock: quantity('clock of engines and links’ sending side, for example 1.6 GHz'),
     engines: count('independent in-order issue streams', 4096),
     window: count('outstanding requests per engine', 65_536).default(128),
@@ -142,7 +145,7 @@ const compute = z
       .meta({ description: 'tiles that may be loading or waiting at once, the computing one included' }),
     request: quantity('longest request an engine sends').default('256 B'),
     peak: z
-      .record(z.string(), quantity('peak compute rate in this number format'))
+      .record(line().min(1), quantity('peak compute rate in this number format'))
       .default({})
       .meta({ description: 'peak compute rate of the die per number format, for example bf16: 400 TFLOP/s' }),
     edge: quantity('die edge available for links, for example 32 mm').optional(),
@@ -151,7 +154,7 @@ const compute = z
 
 const link = z
   .strictObject({
-    name: z.string().min(1).meta({ description: 'name of the link; a range of stacks gets .0, .1 … behind it' }),
+    name: line().min(1).meta({ description: 'name of the link; a range of stacks gets .0, .1 … behind it' }),
     from: z.string().meta({ description: 'compute die' }),
     to: z.string().meta({ description: 'stack or stacks of a memory: hbm.0 or hbm.0-2' }),
     lanes: count('lanes of one direction', 65_536),
@@ -204,9 +207,10 @@ export const packageFile = z
   .strictObject({
     penstock: z.literal(1).meta({ description: 'format version' }),
     extends: z.string().optional().meta({ description: 'another package file that this one is laid over' }),
-    name: z.string().min(1).meta({ description: 'name of the package' }),
+    name: line().min(1).meta({ description: 'name of the package' }),
     caution: z
       .string()
+      .regex(/^(?:\P{Cc}|\s)*$/u, 'text without control characters')
       .default('')
       .meta({ description: 'a sentence that reports repeat, for example that the data is invented' }),
     compute: z.array(compute).min(1).max(64).meta({ description: 'compute dies' }),

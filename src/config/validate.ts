@@ -5,11 +5,24 @@ import { locate, type Path, plain, subtree, type Tree } from './tree.js';
 
 /** Checks a document against the schema; the first thing wrong is thrown with its place. */
 export function validate(tree: Tree): PackageFile {
+  refuseProto(tree, []);
   const answer = packageFile.safeParse(plain(tree));
   if (answer.success) return answer.data;
   // a misspelt key is the likelier cause than the one that is then missing
   const { issues } = answer.error;
   throw explain(tree, issues.find(({ code }) => code === 'unrecognized_keys') ?? issues[0]);
+}
+
+/** JavaScript keeps this one name for itself, so the schema would pass over it: what is written would not be what is meant. */
+function refuseProto(tree: Tree, path: Path): void {
+  if (tree.kind === 'list') tree.items.forEach((item, i) => void refuseProto(item, [...path, i]));
+  if (tree.kind !== 'map') return;
+  for (const [name, { key, value }] of tree.entries) {
+    const at = [...path, name];
+    if (name !== '__proto__') refuseProto(value, at);
+    else
+      throw new InputError({ where: { ...key, path: at.join('.') }, found: `key '${name}'`, expected: 'another key' });
+  }
 }
 
 function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
@@ -48,13 +61,16 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
       return new InputError({
         where: locate(tree, path),
         found,
-        expected: issue.message === 'field:bits' ? 'a field and its bits, for example bank_group:2' : issue.message,
+        expected: FORMATS[issue.message] ?? issue.message,
       });
     case 'invalid_key':
       return new InputError({
         where: locate(tree, path, true),
         found: `key '${String(path[path.length - 1])}'`,
-        expected: 'a field and a bit of it, for example bank_group.0',
+        expected:
+          path[0] === 'address_map'
+            ? 'a field and a bit of it, for example bank_group.0'
+            : 'the name of a number format, for example bf16',
       });
     default: {
       const expected = 'expected' in issue ? wording(String(issue.expected), path) : issue.message;
@@ -62,6 +78,12 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
     }
   }
 }
+
+/** What the schema calls the shapes of its strings, said in full. */
+const FORMATS: Readonly<Record<string, string>> = {
+  'field:bits': 'a field and its bits, for example bank_group:2',
+  'row.bit': 'a bit of the row, for example row.3',
+};
 
 const WORDS: Readonly<Record<string, string>> = {
   string: 'text',

@@ -237,7 +237,7 @@ const CASES: [string, string, string][] = [
   [
     '  granule: 256 B',
     '  granule: 256 B\n  xor: { bank.0: [col.1] }',
-    "p.yaml:15:19: address_map.xor.bank.0.0: found 'col.1'; expected row.bit",
+    "p.yaml:15:19: address_map.xor.bank.0.0: found 'col.1'; expected a bit of the row, for example row.3",
   ],
   [
     '  granule: 256 B',
@@ -452,10 +452,188 @@ const CASES: [string, string, string][] = [
     'name: &x [*x]',
     'p.yaml:2:10: found values in more than 32 levels, aliases written out; expected at most 131072 values in 32 levels',
   ],
+  // the separations that must not be shorter than one another
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tCCD_L: 1 ck }',
+    'p.yaml:9:24: memory.0.timings.tCCD_L: found tCCD_L = 1 ck, tCCD_S = 2 ck; expected tCCD_L of at least tCCD_S',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tCCD_R: 1 ck }',
+    'p.yaml:9:24: memory.0.timings.tCCD_R: found tCCD_R = 1 ck, tCCD_S = 2 ck; expected tCCD_R of at least tCCD_S',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tRRD_L: 2 ck }',
+    'p.yaml:9:24: memory.0.timings.tRRD_L: found tRRD_L = 2 ck, tRRD_S = 4 ck; expected tRRD_L of at least tRRD_S',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tWTR_L: 1 ck }',
+    'p.yaml:9:24: memory.0.timings.tWTR_L: found tWTR_L = 1 ck, tWTR_S = 5 ck; expected tWTR_L of at least tWTR_S',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { WL: 99 ck }',
+    'p.yaml:9:20: memory.0.timings.WL: found WL = 99 ck, RL = 26 ck, tRTW = 2 ck; expected a write burst that starts after the read burst before it: WL of at most RL + burst + tRTW',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tRCDRD: 0 ck }',
+    'p.yaml:9:24: memory.0.timings.tRCDRD: found tRCDRD = 0 ck; expected at least one clock',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tRP: 1.5 ck }',
+    "p.yaml:9:21: memory.0.timings.tRP: found '1.5 ck'; expected a whole number of clocks, for example 4 ck",
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    timings: { tRP: }',
+    'p.yaml:9:21: memory.0.timings.tRP: found an empty value; expected a quantity with its unit: tRP: a time (14 ns), clocks (4 ck) or max(4 ck, 2.5 ns)',
+  ],
+  // counts that no table holds
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    organisation: { bank_groups: 32, banks_per_group: 4, sids: 1 }',
+    'p.yaml:9:19: memory.0.organisation: found 128 banks in 32 groups a pseudo-channel; expected at most 64 banks in 32 groups',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    organisation: { bank_groups: 16, banks_per_group: 4, sids: 1 }\n    refresh: { mode: per-bank }',
+    'p.yaml:10:22: memory.0.refresh.mode: found per-bank refresh of more than 32 banks a stack ID; expected all-bank refresh',
+  ],
+  [
+    '    stacks: 2',
+    '    stacks: 2\n    organisation: { sids: 3 }',
+    'p.yaml:16:11: address_map.fields: found 1 bits of sid; expected 2 bits: the device has 3',
+  ],
+  [
+    'memory:\n',
+    'memory:\n  - { name: two, device: hbm3-6.4, stacks: 1 }\n',
+    'p.yaml:6:3: memory: found a list of 2; expected a list of at most 1',
+  ],
+  // numbers that are none, and words of YAML
+  [
+    'stacks: 2',
+    'stacks: .inf',
+    'p.yaml:8:13: memory.0.stacks: found .inf; expected a whole number: stacks of this memory',
+  ],
+  [
+    'stacks: 2',
+    'stacks: .nan',
+    'p.yaml:8:13: memory.0.stacks: found .nan; expected a whole number: stacks of this memory',
+  ],
+  ['stacks: 2', 'stacks: -0', 'p.yaml:8:13: memory.0.stacks: found -0; expected at least 1'],
+  [
+    'stacks: 2',
+    'stacks: yes',
+    "p.yaml:8:13: memory.0.stacks: found 'yes'; expected a whole number: stacks of this memory",
+  ],
+  [
+    'to: hbm.0-1',
+    'to: hbm.0-99999999999999999999',
+    "p.yaml:11:33: links.0.to: found 'hbm.0-99999999999999999999'; expected a stack of memory 'hbm', hbm.0 to hbm.1, or a range such as hbm.0-1",
+  ],
+  [
+    'name: small',
+    'null: 3',
+    "p.yaml:2:1: null: found unknown key 'null'; expected one of penstock, extends, name, caution, compute, memory, links, address_map",
+  ],
+  ['stacks: 2', 'stacks: "2', 'p.yaml:16:1: found Missing closing "quote; expected well-formed YAML'],
+  // a key that JavaScript keeps for itself would be passed over
+  [
+    'peak: { bf16: 1 TFLOP/s }',
+    'peak: { __proto__: 1 TFLOP/s }',
+    "p.yaml:4:80: compute.0.peak.__proto__: found key '__proto__'; expected another key",
+  ],
+  [
+    '  granule: 256 B',
+    '  granule: 256 B\n  xor: { __proto__: [row.0] }',
+    "p.yaml:15:10: address_map.xor.__proto__: found key '__proto__'; expected another key",
+  ],
+  [
+    'name: small',
+    'constructor: 3',
+    "p.yaml:2:1: constructor: found unknown key 'constructor'; expected one of penstock, extends, name, caution, compute, memory, links, address_map",
+  ],
+  // what would end up in a terminal
+  [
+    'peak: { bf16: 1 TFLOP/s }',
+    'peak: { "": 1 TFLOP/s }',
+    "p.yaml:4:80: compute.0.peak.: found key ''; expected the name of a number format, for example bf16",
+  ],
+  [
+    'name: west',
+    String.raw`name: "we\e[31mst"`,
+    String.raw`p.yaml:4:13: compute.0.name: found 'we\x1b[31mst'; expected text without line ends or other control characters`,
+  ],
+  [
+    'name: small',
+    'name: small\ncaution: "\\e]0;x\\a"',
+    String.raw`p.yaml:3:10: caution: found '\x1b]0;x\x07'; expected text without control characters`,
+  ],
+  [
+    'window: 4',
+    String.raw`"win\ndow": 4`,
+    String.raw`p.yaml:4:45: compute.0.win\x0adow: found unknown key 'win\x0adow'; expected 'window'`,
+  ],
+  ['penstock: 1', 'penstock: 1\nextends: ""', "p.yaml:2:10: extends: found ''; expected the name of a package file"],
+  [
+    'penstock: 1',
+    'penstock: 1\nextends: "a\\0b"',
+    String.raw`p.yaml:2:10: extends: found 'a\x00b', a file that does not exist; expected a package file (YAML)`,
+  ],
 ];
 it.each(CASES)('%j as %j', (part, instead, message) => {
   expect(GOOD).toContain(part);
   expect(refusal(() => parsePackage(GOOD.replace(part, instead), 'p.yaml'))).toBe(message);
+});
+
+it('a long value is shown by its ends', () => {
+  const long = GOOD.replace('device: hbm3-6.4', `device: ${'k'.repeat(100_000)}`);
+  const said = refusal(() => parsePackage(long, 'p.yaml'));
+  expect(said).toMatch(/^p.yaml:7:13: memory.0.device: found 'k+…k+'; expected a device preset: hbm2-1.8, hbm3-6.4$/);
+  expect(said.length).toBeLessThan(600);
+  const key = refusal(() => parsePackage(GOOD.replace('window: 4', `${'k'.repeat(50_000)}: 4`), 'p.yaml'));
+  expect(key).toMatch(/^p.yaml:4:45: compute.0.k+…k+: found unknown key 'k+…k+'; expected one of name, clock/);
+  expect(key.length).toBeLessThan(1000);
+  expect(refusal(() => parsePackage(`extends: ${'f'.repeat(5000)}`, 'p.yaml'))).toMatch(
+    /^p.yaml:1:10: extends: found 'f+…f+', a file that does not exist; expected/,
+  );
+});
+
+it('a caution may have several lines', () => {
+  const folded = GOOD.replace('name: small', 'name: small\ncaution: >\n  Invented,\n  all of it.\n');
+  expect(parsePackage(folded, 'p.yaml').caution).toBe('Invented, all of it.\n');
+});
+
+/*
+ * A count of a thousand million, whichever it is, is refused at once: nothing is made of that size first. The words differ, the
+ * time and the memory do not.
+ */
+describe('counts of a thousand million take neither time nor memory', () => {
+  const counts = [
+    'memory.0.stacks',
+    ...['channels', 'pseudo_channels', 'sids', 'bank_groups', 'banks_per_group', 'rows', 'columns', 'burst_ck'].map(
+      (name) => `memory.0.organisation.${name}`,
+    ),
+    ...['read_queue', 'write_queue', 'drain_high', 'drain_low'].map((name) => `memory.0.controller.${name}`),
+    ...['engines', 'window', 'issue_per_clock', 'buffering'].map((name) => `compute.0.${name}`),
+    'links.0.lanes',
+  ];
+  it.each(counts)('%s', (key) => {
+    const before = process.memoryUsage();
+    const began = performance.now();
+    expect(refusal(() => parsePackage(GOOD, 'p.yaml', [`${key}=1000000000`]))).toMatch(
+      new RegExp(`: ${key.replaceAll('.', '\\.')}: found 1000000000; expected at most \\d+$`),
+    );
+    const after = process.memoryUsage();
+    expect(performance.now() - began).toBeLessThan(500);
+    expect(after.arrayBuffers - before.arrayBuffers).toBeLessThan(2 ** 20);
+    expect(after.heapUsed - before.heapUsed).toBeLessThan(2 ** 26);
+  });
 });
 
 describe('what is no package file', () => {
@@ -534,6 +712,7 @@ describe('overrides', () => {
     ],
     ['name=[a', 'found Flow sequence must end with a ]; expected well-formed YAML'],
     ['name=*a', 'found alias *a; expected an anchor of that name earlier in the file'],
+    ['compute.0.peak.__proto__=1 TFLOP/s', "compute.0.peak.__proto__: found key '__proto__'; expected another key"],
     [
       'extends=other.yaml',
       'found the base of a package file; expected a key of the package itself: what a file extends is read before anything is set',
