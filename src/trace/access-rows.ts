@@ -1,14 +1,14 @@
 /**
  * Reads the rows of an access trace into batches. Bytes go through the plain-row parser; the odd row alone goes through records and
- * cells; and from the first quote on, where a record may go over several lines, all the rest goes through fast-csv.
+ * cells; and from a quote on, where a record may go over several lines, the rest of the chunk goes through fast-csv.
  */
-import type { Hash } from 'node:crypto';
 import { type AccessRows, BATCH_ROWS } from './access.js';
 import type { AccessBatch, TraceFacts } from './batch.js';
+import type { FileHash } from './bytes.js';
 import type { Header } from './header.js';
 import { PlainRows } from './plain.js';
 import { LONGEST_RECORD, Splitter } from './records.js';
-import { type RowBlock, readRows } from './rows.js';
+import { CellReader, pieces, type RowBlock } from './rows.js';
 import { noRows, type Tolerance } from './tolerance.js';
 
 const [NEWLINE, QUOTE] = [10, 34];
@@ -20,7 +20,7 @@ export interface Reading {
   readonly access: AccessRows;
   readonly tolerance: Tolerance;
   readonly facts: { -readonly [K in keyof TraceFacts]: TraceFacts[K] };
-  readonly hash: Hash;
+  readonly hash: FileHash;
 }
 
 /** Batches from bytes that begin on line `line`, below the header. The batch is filled again after each pull. */
@@ -34,59 +34,91 @@ export async function* readPlain(
   const { delimiter } = header.shape;
   const plain = new PlainRows(header, access);
   const { batch } = access;
-  let rest = first;
-  let next = line; // number of the line at the start of `rest`
-  let ended = false;
+  let next = line; // number of the line that is read next
+  let tail: Buffer = Buffer.alloc(0); // what has been seen of it, or of a record that has quotes
+  let chunk = first;
   for (;;) {
-    const data = rest;
-    const odd = firstOdd(data);
-    let at = 0;
-    for (;;) {
+    if (tail.length === 0) yield* readChunk(chunk, false);
+    else if (tail.includes(QUOTE) || tail.length > LONGEST_RECORD)
+      yield* readChunk(Buffer.concat([tail, chunk]), false);
+    else {
+      // only the line that two chunks share is copied
+      const end = chunk.indexOf(NEWLINE) + 1;
+      yield* readChunk(Buffer.concat([tail, chunk.subarray(0, end || chunk.length)]), false);
+      if (end > 0)
+        yield* readChunk(tail.length === 0 ? chunk.subarray(end) : Buffer.concat([tail, chunk.subarray(end)]), false);
+    }
+    const { done, value } = await source.next();
+    if (done) break;
+    chunk = value;
+  }
+  if (tail.length > 0) yield* readChunk(Buffer.concat([tail, Buffer.from('\n')]), true);
+  yield* finishReading(reading);
+
+  /** Takes the whole lines of `data` and leaves the rest in `tail`. */
+  async function* readChunk(data: Buffer, last: boolean): AsyncGenerator<AccessBatch> {
+    const view = new DataView(data.buffer, data.byteOffset, data.length);
+    const end = data.lastIndexOf(NEWLINE) + 1;
+    for (let at = 0; at < end; ) {
       if (batch.count === BATCH_ROWS) {
         handOut(reading);
         yield batch;
         batch.count = 0;
       }
-      const end = plain.take(data, at, odd, next);
-      if (end > 0) {
-        at = end;
-        next++;
-        continue;
+      at = plain.take(data, view, at, end, next);
+      next += plain.taken;
+      if (at === end || batch.count === BATCH_ROWS) continue;
+      const oddEnd = data.indexOf(NEWLINE, at) + 1;
+      const odd = data.subarray(at, oddEnd);
+      if ((odd.includes(QUOTE) || odd.includes(0)) && !isComment(odd)) {
+        yield* readRecords(data.subarray(at), last);
+        return;
       }
-      const newline = data.indexOf(NEWLINE, at);
-      if (newline < 0 || newline > odd) break;
-      takeOdd(data.subarray(at, newline + 1), next);
-      at = newline + 1;
-      next++;
+      takeOdd(odd);
+      at = oddEnd;
     }
-    rest = data.subarray(at);
-    if (odd < data.length || rest.length > LONGEST_RECORD) {
-      const blocks = readRows(joined(rest, source), file, delimiter, new Splitter(file, delimiter, next));
-      yield* readBlocks(reading, blocks);
-      return;
-    }
-    const more = ended ? { done: true as const, value: undefined } : await source.next();
-    if (!more.done) rest = rest.length === 0 ? more.value : Buffer.concat([rest, more.value]);
-    else if (rest.length > 0) {
-      rest = Buffer.concat([rest, Buffer.from('\n')]);
-      ended = true;
-    } else break;
+    tail = Buffer.from(data.subarray(end)); // a copy: the chunk may be filled again
+    if (tail.length > LONGEST_RECORD) yield* readRecords(tail, last); // which says what is wrong
   }
-  yield* finishReading(reading);
 
-  function takeOdd(bytes: Buffer, number: number): void {
-    for (const { text, lines, fault, fatal } of new Splitter(file, delimiter, number).push(bytes, false)) {
+  /** Reads the records from the first with a quote to the end of the chunk through fast-csv. */
+  async function* readRecords(data: Buffer, last: boolean): AsyncGenerator<AccessBatch> {
+    const splitter = new Splitter(file, delimiter, next);
+    const cells = new CellReader(file, delimiter);
+    try {
+      let given = 0;
+      for (const piece of pieces(data)) {
+        given += piece.length;
+        for (const { text, lines, fault, fatal } of splitter.push(piece, last && given === data.length))
+          yield* takeRows(reading, { rows: await cells.read(text, lines), lines, fault, fatal });
+      }
+    } finally {
+      cells.close();
+    }
+    tail = Buffer.from(splitter.rest);
+    next = splitter.line;
+  }
+
+  /** Takes a line of its own that has no quotes, but something else out of the ordinary. */
+  function takeOdd(bytes: Buffer): void {
+    for (const { text, lines, fault, fatal } of new Splitter(file, delimiter, next).push(bytes, false)) {
       if (fault !== null && fatal) throw fault;
       if (fault !== null) tolerance.skip(fault);
       if (lines.length === 0) continue;
       try {
-        access.add(text.replace(/\r?\n$/, '').split(delimiter), number);
+        access.add(text.replace(/\r?\n$/, '').split(delimiter), next);
       } catch (error) {
         tolerance.skip(error);
       }
     }
     facts.skippedRows = tolerance.skipped;
+    next++;
   }
+}
+
+/** Whether a line is a comment. */
+function isComment(line: Buffer): boolean {
+  return /^[ \t\r]*#/.test(line.toString('latin1'));
 }
 
 /** Batches from rows of cells. */
@@ -94,32 +126,35 @@ export async function* readBlocks(
   reading: Reading,
   blocks: AsyncIterable<RowBlock>,
 ): AsyncGenerator<AccessBatch, undefined> {
-  const { access, tolerance } = reading;
-  const { batch } = access;
-  for await (const { rows, lines, fault, fatal } of blocks) {
-    for (let i = 0; i < rows.length; i++) {
-      if (batch.count === BATCH_ROWS) {
-        handOut(reading);
-        yield batch;
-        batch.count = 0;
-      }
-      try {
-        access.add(rows[i], lines[i]);
-      } catch (error) {
-        tolerance.skip(error);
-      }
-    }
-    if (fault !== null && fatal) throw fault;
-    if (fault !== null) tolerance.skip(fault);
-  }
+  for await (const block of blocks) yield* takeRows(reading, block);
   yield* finishReading(reading);
 }
 
+/** Adds the rows of a block; hands out the batch whenever it is full and another row comes. */
+function* takeRows(reading: Reading, { rows, lines, fault, fatal }: RowBlock): Generator<AccessBatch> {
+  const { access, tolerance } = reading;
+  const { batch } = access;
+  for (let i = 0; i < rows.length; i++) {
+    if (batch.count === BATCH_ROWS) {
+      handOut(reading);
+      yield batch;
+      batch.count = 0;
+    }
+    try {
+      access.add(rows[i], lines[i]);
+    } catch (error) {
+      tolerance.skip(error);
+    }
+  }
+  if (fault !== null && fatal) throw fault;
+  if (fault !== null) tolerance.skip(fault);
+}
+
 /** Ends the reading: the rows left, or the error that there were none. */
-export function* finishReading(reading: Reading): Generator<AccessBatch> {
+export async function* finishReading(reading: Reading): AsyncGenerator<AccessBatch> {
   const { file, access, tolerance, facts, hash } = reading;
   handOut(reading);
-  facts.hash = hash.digest('hex');
+  facts.hash = await hash.hex();
   if (facts.rows === 0) throw noRows(file, tolerance.skipped);
   if (access.batch.count > 0) yield access.batch;
   access.batch.count = 0;
@@ -131,14 +166,6 @@ export function handOut({ access, facts, tolerance }: Reading): void {
   facts.skippedRows = tolerance.skipped;
 }
 
-/** Index of the first byte that a plain row cannot have: a quote or NUL; the length when there is none. */
-function firstOdd(data: Buffer): number {
-  const quote = data.indexOf(QUOTE);
-  const zero = data.indexOf(0);
-  const least = Math.min(quote < 0 ? data.length : quote, zero < 0 ? data.length : zero);
-  return least;
-}
-
 /** The bytes taken already, then the others; closes the source when it is left early. */
 export async function* joined(first: Buffer, others: AsyncIterator<Buffer>): AsyncGenerator<Buffer> {
   try {
@@ -146,7 +173,7 @@ export async function* joined(first: Buffer, others: AsyncIterator<Buffer>): Asy
     for (;;) {
       const { done, value } = await others.next();
       if (done) return;
-      yield value;
+      yield Buffer.from(value); // a copy: the chunk may be filled again
     }
   } finally {
     await others.return?.();

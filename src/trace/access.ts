@@ -139,14 +139,19 @@ export class AccessRows {
     batch.kernel[i] = kernel;
     if (batch.timePs !== null) {
       batch.timePs[i] = timePs;
-      this.lastTime = timePs;
-      this.lastTimeLine = line;
+      this.setLastTime(timePs, line);
     }
     if (batch.die !== null) batch.die[i] = die;
     if (batch.engine !== null) batch.engine[i] = engine;
     if (batch.tile !== null) batch.tile[i] = tile;
     if (batch.flops !== null) batch.flops[i] = flops;
     if (batch.after !== null) batch.after[i] = after;
+  }
+
+  /** Notes the time of the row last added, ps, and its line, for the next one must not be earlier. */
+  setLastTime(timePs: number, line: number): void {
+    this.lastTime = timePs;
+    this.lastTimeLine = line;
   }
 
   private empty(position: number): boolean {
@@ -167,6 +172,13 @@ export class AccessRows {
       if (address >= base && address < base + size) return end <= base + size ? die : -2;
     }
     return -1;
+  }
+
+  /** First address and end of the memory whose owner `ownerOf` gave. */
+  rangeOf(owner: number): readonly [from: number, end: number] {
+    const { capacity, geometry } = this.limits;
+    if (owner >= 0) return [geometry[owner].base, Math.min(capacity, geometry[owner].base + geometry[owner].capacity)];
+    return geometry.length === 0 ? [0, capacity] : [0, -1]; // between memories: looked up each time
   }
 
   private owner(address: number, bytes: number): number {

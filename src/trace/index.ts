@@ -10,8 +10,9 @@
 export { FARTHEST_AFTER, LONGEST_ACCESS, MOST_KERNELS } from './access.js';
 export * from './batch.js';
 export { ACCESS_COLUMNS, KERNEL_COLUMNS } from './columns.js';
+export { openBytes } from './files.js';
 export { DEFAULT_TILE } from './kernels.js';
-export { openBytes, openTrace, type TraceOptions } from './open.js';
+export { openTrace, type TraceOptions } from './open.js';
 export { PATTERNS, parsePattern } from './pattern.js';
 export { placeKernels } from './place.js';
 export { OWN_SHAPE, parseShape, type Shape, type ShapeText } from './shape.js';

@@ -1,6 +1,7 @@
 /** Kernel-trace rows to kernels: every cell checked, sizes in bytes, patterns understood. */
 import { parseBytes, parseFlops } from '../units.js';
 import type { DieGeometry, Kernel, KernelTrace, Pattern } from './batch.js';
+import type { FileHash } from './bytes.js';
 import { Cells } from './cells.js';
 import type { Header } from './header.js';
 import { parsePattern, SEQUENTIAL } from './pattern.js';
@@ -23,7 +24,7 @@ export async function readKernels(
   tolerance: Tolerance,
   dieNames: readonly string[],
   geometry: readonly DieGeometry[],
-  hash: () => string,
+  hash: FileHash,
 ): Promise<KernelTrace> {
   const rows = new KernelRows(file, header, dieNames, geometry);
   const kernels: Kernel[] = [];
@@ -39,7 +40,7 @@ export async function readKernels(
     if (block.fault !== null) tolerance.skip(block.fault);
   }
   if (kernels.length === 0) throw noRows(file, tolerance.skipped);
-  const facts = { rows: kernels.length, skippedRows: tolerance.skipped, hash: hash() };
+  const facts = { rows: kernels.length, skippedRows: tolerance.skipped, hash: await hash.hex() };
   return { kind: 'kernel', file, streams: rows.streams, kernels, facts };
 }
 

@@ -1,17 +1,15 @@
 /**
- * Opens a trace: the one place of this folder that touches files. Reads bytes, un-gzips them, hashes them as they come, and lets
- * the header row decide which kind of trace it is. Nothing is read faster than it is used, and memory does not grow with length.
+ * Opens a trace: lets its name, its first bytes and its header row decide what it is and who reads it. Memory does not grow with the
+ * length of a trace: it is read a few buffers ahead of its user, and no further.
  */
-import { createHash, type Hash } from 'node:crypto';
-import { createReadStream } from 'node:fs';
-import { stat } from 'node:fs/promises';
 import { InputError } from '../errors.js';
 import { AccessRows } from './access.js';
 import { joined, type Reading, readBlocks, readPlain } from './access-rows.js';
 import { openArrow } from './arrow.js';
 import type { AccessBatch, AccessTrace, DieGeometry, Trace } from './batch.js';
-import { CHUNK, decode, hashed, unreadable } from './bytes.js';
+import type { FileHash } from './bytes.js';
 import { readColumns } from './column-rows.js';
+import { type ColumnHash, hashOf, mustBeFile, openHashed } from './files.js';
 import { type Header, readHeader } from './header.js';
 import { readKernels } from './kernels.js';
 import { type ColumnFile, openParquet } from './parquet.js';
@@ -38,25 +36,21 @@ export interface TraceOptions {
 }
 
 /**
- * Opens an access trace or a kernel trace (`.csv`, `.csv.gz`, or '-' for `options.input`). A kernel trace is read to its end; of
+ * Opens an access trace or a kernel trace (`.csv`, `.csv.gz`, `.csv.zst`, or '-' for `options.input`; an access trace also `.parquet`
+ * or `.arrow`). A kernel trace is read to its end; of
  * an access trace the first batch is read, so that what is wrong near its top is said here, and `batches()`, which may be called
  * once, reads on. Throws InputError for whatever the user can mend and SystemError for what
  * cannot be read.
  */
 export async function openTrace(file: string, options: TraceOptions = {}): Promise<Trace> {
-  const hash = createHash('sha256');
-  const expected = 'a trace file, .csv, .csv.gz, .parquet or .arrow';
+  const expected = 'a trace file, .csv, .csv.gz, .csv.zst, .parquet or .arrow';
   const openColumns = /\.(parquet|arrow|feather)$/i.exec(file)?.[1].toLowerCase();
   if (openColumns !== undefined) {
-    await mustBeFile(file, expected);
-    return openColumnFile(
-      file,
-      openColumns === 'parquet' ? await openParquet(file) : await openArrow(file),
-      options,
-      hash,
-    );
+    const before = await mustBeFile(file, expected);
+    const columns = openColumns === 'parquet' ? await openParquet(file) : await openArrow(file);
+    return openColumnFile(file, columns, options, hashOf(file, before));
   }
-  const bytes = await openBytes(file, { input: options.input, hash, expected });
+  const { bytes, hash } = await openHashed(file, { input: options.input, expected, reuse: true });
   const source = bytes[Symbol.asyncIterator]();
   const shape = options.shape ?? OWN_SHAPE;
   const tolerance = new Tolerance(options.skipBadRows ?? 0);
@@ -82,33 +76,59 @@ export async function openTrace(file: string, options: TraceOptions = {}): Promi
       return await accessTrace(reading, readBlocks(reading, rows));
     }
     const { dieNames = [], geometry = [] } = options;
-    return await readKernels(file, header, rows, tolerance, dieNames, geometry, () => hash.digest('hex'));
+    return await readKernels(file, header, rows, tolerance, dieNames, geometry, hash);
   } catch (error) {
     await source.return?.(); // closes the file
     throw error;
   }
 }
 
-/** A trace whose file holds columns. Its hash is that of the file's bytes, read once more for it. */
-async function openColumnFile(file: string, columns: ColumnFile, options: TraceOptions, hash: Hash): Promise<Trace> {
-  const header = readHeader(columns.names, 1, file, options.shape ?? OWN_SHAPE);
-  if (header.kind === 'kernel') {
-    throw new InputError({
-      where: { file },
-      found: 'a kernel trace in columns',
-      expected: 'an access trace; kernel traces are CSV',
-      hint: 'write it as .csv',
-    });
+/** A trace whose file holds columns. */
+async function openColumnFile(
+  file: string,
+  columns: ColumnFile,
+  options: TraceOptions,
+  hash: ColumnHash,
+): Promise<Trace> {
+  try {
+    const header = readHeader(columns.names, 1, file, options.shape ?? OWN_SHAPE);
+    if (header.kind === 'kernel') {
+      throw new InputError({
+        where: { file },
+        found: 'a kernel trace in columns',
+        expected: 'an access trace; kernel traces are CSV',
+        hint: 'write it as .csv',
+      });
+    }
+    const reading = startReading(file, header, new Tolerance(options.skipBadRows ?? 0), options, hash);
+    const wanted = [...new Set([...header.at.values()].filter((at) => at < header.names.length))].map(
+      (at) => header.names[at],
+    );
+    return await accessTrace(reading, closing(readColumns(reading, columns.blocks(wanted)), hash));
+  } catch (error) {
+    await hash.close();
+    throw error;
   }
-  for await (const chunk of createReadStream(file, { highWaterMark: CHUNK })) hash.update(chunk);
-  const reading = startReading(file, header, new Tolerance(options.skipBadRows ?? 0), options, hash);
-  const wanted = [...new Set([...header.at.values()].filter((at) => at < header.names.length))].map(
-    (at) => header.names[at],
-  );
-  return accessTrace(reading, readColumns(reading, columns.blocks(wanted)));
 }
 
-function startReading(file: string, header: Header, tolerance: Tolerance, options: TraceOptions, hash: Hash): Reading {
+async function* closing(
+  batches: AsyncGenerator<AccessBatch, undefined>,
+  hash: ColumnHash,
+): AsyncGenerator<AccessBatch, undefined> {
+  try {
+    yield* batches;
+  } finally {
+    await hash.close();
+  }
+}
+
+function startReading(
+  file: string,
+  header: Header,
+  tolerance: Tolerance,
+  options: TraceOptions,
+  hash: FileHash,
+): Reading {
   const { dieNames = [], geometry = [], cyclePs = 0 } = options;
   const end = geometry.length > 0 ? Math.max(...geometry.map((die) => die.base + die.capacity)) : 2 ** 52;
   const access = new AccessRows(file, header, { dieNames, geometry, capacity: options.capacity ?? end, cyclePs });
@@ -156,7 +176,7 @@ async function readHead(source: AsyncIterator<Buffer>): Promise<Head> {
   let line = 1;
   for (;;) {
     const { done, value } = await source.next();
-    if (!done) data = data.length === 0 ? value : Buffer.concat([data, value]);
+    if (!done) data = Buffer.concat([data, value]); // a copy: the chunk may be filled again
     if (start === 0 && data[0] === 0xef && data[1] === 0xbb && data[2] === 0xbf) start = 3; // UTF-8 byte order mark
     for (;;) {
       const newline = data.indexOf(10, start);
@@ -200,53 +220,5 @@ async function* withBlock(first: RowBlock, others: AsyncGenerator<RowBlock>): As
     yield* others;
   } finally {
     await others.return(undefined);
-  }
-}
-
-export interface ByteSource {
-  readonly input: AsyncIterable<Buffer> | undefined; // what file '-' reads
-  readonly hash?: Hash; // fed with the bytes as they are stored
-  readonly expected: string; // what kind of file would do, for errors
-}
-
-/** The bytes of a text file, un-gzipped when it is gzip. Throws InputError when there is none to read, or SystemError. */
-export async function openBytes(
-  file: string,
-  { input, hash = createHash('sha256'), expected }: ByteSource,
-): Promise<AsyncIterable<Buffer>> {
-  if (file === '-') {
-    if (input === undefined) {
-      throw new InputError({
-        where: { file },
-        found: "'-', and no standard input to read",
-        expected: 'a stream handed in with it',
-        hint: 'name a file',
-      });
-    }
-    return decode(hashed(input, file, hash), file, 'by content');
-  }
-  await mustBeFile(file, expected);
-  const raw = hashed(createReadStream(file, { highWaterMark: CHUNK }), file, hash);
-  return decode(raw, file, file.endsWith('.gz') ? 'gzip' : 'plain');
-}
-
-/** Throws InputError when there is no such file, SystemError when the system will not say. */
-async function mustBeFile(file: string, expected: string): Promise<void> {
-  let found: string | null = null;
-  try {
-    if ((await stat(file)).isDirectory()) found = 'a directory';
-  } catch (error) {
-    const code = (error as NodeJS.ErrnoException).code ?? '';
-    if (!['ENOENT', 'ENOTDIR', 'ENAMETOOLONG', 'ELOOP', 'ERR_INVALID_ARG_VALUE'].includes(code))
-      throw unreadable(file, error);
-    found = 'no such file';
-  }
-  if (found !== null) {
-    throw new InputError({
-      where: { file },
-      found,
-      expected,
-      hint: found === 'a directory' ? 'name a file in it' : 'check the path',
-    });
   }
 }

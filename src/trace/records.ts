@@ -46,9 +46,14 @@ export class Splitter {
   constructor(
     private readonly file: string,
     private readonly delimiter = ',',
-    private line = 1, // number of the line at the start of `pending`
+    public line = 1, // number of the line at the start of `rest`
   ) {
     this.started = line > 1;
+  }
+
+  /** Start of a record that has not ended yet. */
+  get rest(): Buffer {
+    return this.pending;
   }
 
   *push(chunk: Buffer, last: boolean): Generator<RecordBlock> {

@@ -19,50 +19,78 @@ export interface RowBlock {
 
 const PIECE = 16384; // bytes given to fast-csv at a time: it is quickest on small pieces
 
-/** Rows of `source`, from where `splitter` stands. */
+/** Rows of `source`, from its beginning. */
 export async function* readRows(
   source: AsyncIterable<Buffer>,
   file: string,
   delimiter = ',',
-  splitter: Splitter = new Splitter(file, delimiter),
 ): AsyncGenerator<RowBlock> {
-  const options: ParserOptionsArgs = { headers: false, ignoreEmpty: false, delimiter };
-  const csv = parse(options);
-  let failure: Error | null = null;
-  let wake: () => void = () => {};
-  csv.on('readable', () => wake());
-  csv.on('error', (error) => {
-    failure = error;
-    wake();
-  });
+  const cells = new CellReader(file, delimiter);
   try {
-    for await (const { text, lines, fault, fatal } of splitRecords(inPieces(source), file, splitter)) {
-      const rows: string[][] = [];
-      let taken = text === '';
-      if (!taken) {
-        csv.write(text, () => {
-          taken = true;
-          wake();
-        });
-      }
-      for (;;) {
-        const row = csv.read() as string[] | null;
-        if (row !== null) rows.push(row);
-        else if (failure !== null) throw failure;
-        else if (taken) break;
-        else await new Promise<void>((resolve) => (wake = resolve));
-      }
-      if (rows.length !== lines.length) {
-        throw new Error(`${file}: ${lines.length} records were read as ${rows.length} rows near line ${lines.at(-1)}`);
-      }
-      yield { rows, lines, fault, fatal };
-    }
+    for await (const { text, lines, fault, fatal } of splitRecords(
+      inPieces(source),
+      file,
+      new Splitter(file, delimiter),
+    ))
+      yield { rows: await cells.read(text, lines), lines, fault, fatal };
   } finally {
-    csv.destroy();
+    cells.close();
   }
 }
 
+/** fast-csv, asked for the cells of some records at a time. */
+export class CellReader {
+  private readonly csv;
+  private failure: Error | null = null;
+  private wake: () => void = () => {};
+
+  constructor(
+    private readonly file: string,
+    delimiter: string,
+  ) {
+    const options: ParserOptionsArgs = { headers: false, ignoreEmpty: false, delimiter };
+    this.csv = parse(options);
+    this.csv.on('readable', () => this.wake());
+    this.csv.on('error', (error) => {
+      this.failure = error;
+      this.wake();
+    });
+  }
+
+  /** Cells of the whole records in `text`, which begin on `lines`. */
+  async read(text: string, lines: readonly number[]): Promise<string[][]> {
+    const rows: string[][] = [];
+    let taken = text === '';
+    if (!taken) {
+      this.csv.write(text, () => {
+        taken = true;
+        this.wake();
+      });
+    }
+    for (;;) {
+      const row = this.csv.read() as string[] | null;
+      if (row !== null) rows.push(row);
+      else if (this.failure !== null) throw this.failure;
+      else if (taken) break;
+      else
+        await new Promise<void>((resolve) => {
+          this.wake = resolve;
+        });
+    }
+    if (rows.length === lines.length) return rows;
+    throw new Error(`${this.file}: ${lines.length} records were read as ${rows.length} rows near line ${lines.at(-1)}`);
+  }
+
+  close(): void {
+    this.csv.destroy();
+  }
+}
+
+/** Cuts bytes to the size fast-csv is quickest with. */
+export function* pieces(bytes: Buffer): Generator<Buffer> {
+  for (let at = 0; at < bytes.length; at += PIECE) yield bytes.subarray(at, at + PIECE);
+}
+
 async function* inPieces(source: AsyncIterable<Buffer>): AsyncGenerator<Buffer> {
-  for await (const chunk of source)
-    for (let at = 0; at < chunk.length; at += PIECE) yield chunk.subarray(at, at + PIECE);
+  for await (const chunk of source) yield* pieces(chunk);
 }

@@ -1,5 +1,6 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
+import { fourDigits, fourHexDigits } from '../../src/trace/digits.js';
 import { type AccessTrace, openTrace, parseShape, shapeFile, type TraceOptions } from '../../src/trace/index.js';
 
 /** Everything a trace says when it is read in chunks of `size` bytes: its rows and facts, or its error. */
@@ -59,9 +60,9 @@ const cell = (...good: string[]): fc.Arbitrary<string> =>
     .map(([text, before, behind]) => before + text + behind);
 const row = fc.tuple(
   cell('R', 'w', 'read', 'WRITE'),
-  cell('0', '0x1F0', '1048576', '0xfffc0', '64', '007', '0XabC'),
+  cell('0', '0x1F0', '1048576', '0xfffc0', '64', '007', '0XabC', '0x0000000000001234', '000001048999'),
   cell('64', '1', '256', '0064'),
-  cell('5', '5.25', '6.0001', '5.50', '7'),
+  cell('5', '5.25', '6.0001', '5.50', '7', '123456', '1234567890.5', '12345678901', '123456789012345678'),
   cell('', '', '0', '1', 'east', 'west'),
   cell('', '0', '3'),
   cell('', 'load', 'store', 'a b'),
@@ -71,11 +72,35 @@ const row = fc.tuple(
 );
 const line = fc.oneof(
   { weight: 30, arbitrary: row.map((cells) => cells.join(',')) },
+  { weight: 1, arbitrary: row.map(([op, ...cells]) => [`"${op}"`, ...cells].join(',')) },
+  {
+    weight: 1,
+    arbitrary: row.map((cells) => cells.map((cell, i) => (i === 6 ? `"a, ""b""\n${cell}"` : cell)).join(',')),
+  },
+  { weight: 1, arbitrary: fc.constantFrom('# a "comment"', 'R,0,64,5,,,"open', 'R,"0"x,64,5,,,,,,') },
   { weight: 1, arbitrary: fc.constantFrom('', '   ', '# a comment', ' # another', 'R,0', ',,,,,,,,,', '\r') },
 );
 const text = fc
   .tuple(fc.array(line, { maxLength: 12 }), fc.constantFrom('\n', '\r\n'), fc.boolean())
   .map(([lines, end, ended]) => lines.join(end) + (ended ? end : ''));
+
+describe('four digits at once', () => {
+  const word = (text: string): number => Buffer.from(text, 'latin1').readInt32LE();
+  const bytes = Array.from({ length: 256 }, (_, byte) => String.fromCharCode(byte));
+
+  it('have the value of the text, and anything else has none', () => {
+    // each byte in each place, beside digits at the ends of their ranges
+    for (const byte of bytes)
+      for (const others of ['0000', '9999', 'aFfA', '09af'])
+        for (let place = 0; place < 4; place++) {
+          const text = others.slice(0, place) + byte + others.slice(place + 1);
+          expect(fourDigits(word(text)), text).toBe(/^\d{4}$/.test(text) ? Number(text) : -1);
+          expect(fourHexDigits(word(text)), text).toBe(/^[\da-f]{4}$/i.test(text) ? Number(`0x${text}`) : -1);
+        }
+    for (let n = 0; n < 10_000; n++) expect(fourDigits(word(String(n).padStart(4, '0')))).toBe(n);
+    for (let n = 0; n < 65_536; n += 7) expect(fourHexDigits(word(n.toString(16).padStart(4, '0')))).toBe(n);
+  });
+});
 
 describe('bytes and fast-csv', () => {
   it('read the same rows from the same text, or refuse it in the same words, however the bytes come', async () => {
