@@ -174,11 +174,16 @@ export class AccessRows {
     return -1;
   }
 
-  /** First address and end of the memory whose owner `ownerOf` gave. */
-  rangeOf(owner: number): readonly [from: number, end: number] {
+  /** First address of the memory whose owner `ownerOf` gave. */
+  firstOf(owner: number): number {
+    return owner >= 0 ? this.limits.geometry[owner].base : 0;
+  }
+
+  /** End of it, never beyond memory. */
+  endOf(owner: number): number {
     const { capacity, geometry } = this.limits;
-    if (owner >= 0) return [geometry[owner].base, Math.min(capacity, geometry[owner].base + geometry[owner].capacity)];
-    return geometry.length === 0 ? [0, capacity] : [0, -1]; // between memories: looked up each time
+    if (owner >= 0) return Math.min(capacity, geometry[owner].base + geometry[owner].capacity);
+    return geometry.length === 0 ? capacity : -1; // between memories: looked up each time
   }
 
   private owner(address: number, bytes: number): number {

@@ -19,9 +19,11 @@ export const HAS_THREAD: boolean = existsSync(fileURLToPath(SCRIPT));
 export function readAhead(file: string): { readonly bytes: AsyncGenerator<Buffer>; readonly hash: FileHash } {
   let found = '';
   async function* bytes(): AsyncGenerator<Buffer> {
-    const reader = new Reader(file, false);
+    // shared, not handed over: once any buffer has been detached, every access to any is checked for it, at a third of the speed
+    const buffers = Array.from({ length: BUFFERS }, () => new SharedArrayBuffer(BUFFER_BYTES));
+    const reader = new Reader(file, buffers);
     try {
-      for (let i = 0; i < BUFFERS; i++) reader.give(new ArrayBuffer(BUFFER_BYTES));
+      for (let i = 0; i < BUFFERS; i++) reader.give(i);
       for (;;) {
         const piece = await reader.next();
         if (piece.kind === 'end') {
@@ -29,7 +31,7 @@ export function readAhead(file: string): { readonly bytes: AsyncGenerator<Buffer
           return;
         }
         if (piece.kind === 'failure') throw failed(file, piece);
-        yield Buffer.from(piece.buffer, 0, piece.length);
+        yield Buffer.from(buffers[piece.buffer], 0, piece.length);
         reader.give(piece.buffer);
       }
     } finally {
@@ -41,7 +43,7 @@ export function readAhead(file: string): { readonly bytes: AsyncGenerator<Buffer
 
 /** The hash of a file that others read: begun now, waited for when it is asked for. */
 export function hashAhead(file: string): FileHash & { readonly close: () => Promise<void> } {
-  const reader = new Reader(file, true);
+  const reader = new Reader(file, []);
   return {
     hex: async () => {
       const piece = await reader.next();
@@ -60,8 +62,8 @@ class Reader {
   private failure: Error | null = null;
   private wake: () => void = () => {};
 
-  constructor(file: string, hashOnly: boolean) {
-    this.worker = new Worker(SCRIPT, { workerData: { file, hashOnly } });
+  constructor(file: string, buffers: readonly SharedArrayBuffer[]) {
+    this.worker = new Worker(SCRIPT, { workerData: { file, buffers } });
     this.worker.unref(); // only who waits for it keeps the process
     this.worker.on('message', (piece: Piece) => {
       this.come.push(piece);
@@ -73,8 +75,8 @@ class Reader {
     });
   }
 
-  give(buffer: ArrayBuffer): void {
-    this.worker.postMessage(buffer, [buffer]);
+  give(buffer: number): void {
+    this.worker.postMessage(buffer);
   }
 
   async next(): Promise<Piece> {

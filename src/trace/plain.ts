@@ -237,7 +237,8 @@ export class PlainRows {
       if (address < from0 || address + bytes > end0) {
         owner = rows.ownerOf(address, address + bytes);
         if (owner === -2) break;
-        [from0, end0] = rows.rangeOf(owner);
+        from0 = rows.firstOf(owner);
+        end0 = rows.endOf(owner);
       }
       if (after > FARTHEST_AFTER || (die >= 0 && die >= rows.dieCount())) break;
       if (engine >= 0 && engine >= rows.enginesOf(die >= 0 ? die : owner)) break;
