@@ -26,6 +26,31 @@ export function naiveAudit(pkg: Package, log: readonly Command[]): Broken[] {
   });
 }
 
+/** The refresh rules broken at the end of a log: one a bank, or a set of banks refreshed together, that has waited too long. */
+export function naiveEnd(pkg: Package, log: readonly Command[]): string[] {
+  const [memory] = pkg.memory;
+  const { channels, pseudo_channels } = memory.organisation;
+  const { mode, scope } = memory.refresh;
+  if (mode === 'off') return [];
+  const banks = allBanks(memory);
+  const broken: string[] = [];
+  for (let channel = 0; channel < channels; channel++)
+    for (let pc = 0; pc < pseudo_channels; pc++) {
+      const own = log.filter((c) => c.channel === channel && c.pc === pc);
+      const end = own.at(-1)?.ck ?? 0;
+      // banks that are refreshed together carry the same name
+      const unit = ([sid, group, bank]: Bank): string =>
+        mode === 'per-bank' ? `${sid}.${group}.${bank}` : scope === 'sid' ? `${sid}` : 'all';
+      for (const name of new Set(banks.map(unit))) {
+        const together = banks.filter((bank) => unit(bank) === name);
+        const { widest, latest } = refreshBounds(memory, own, together);
+        if (end > widest) broken.push('refresh gap');
+        else if (end > latest) broken.push('refresh owed');
+      }
+    }
+  return broken;
+}
+
 const isAct = (c: Command): boolean => c.name === 'ACT';
 const isRead = (c: Command): boolean => c.name === 'RD' || c.name === 'RDA';
 const isWrite = (c: Command): boolean => c.name === 'WR' || c.name === 'WRA';
@@ -49,11 +74,7 @@ function demands(memory: MemoryGroup, log: readonly Command[]): [string, number 
   const soonest = (rule: string, bound: number): void => {
     if (last.ck < bound) broken.push([rule, bound]);
   };
-  const hits = (c: Command, [sid, group, bank]: Bank): boolean => {
-    if (isAll(c)) return memory.refresh.scope === 'pseudo_channel' || c.sid === sid;
-    if (c.name === 'PREA') return c.sid < 0 || c.sid === sid;
-    return c.sid === sid && c.group === group && c.bank === bank;
-  };
+  const hits = (c: Command, bank: Bank): boolean => reaches(memory, c, bank);
   const activates = (c: Command): boolean => isAct(c) || (memory.refresh.refpbInActivateWindow && isPerBank(c));
   const inWindow = (c: Command): boolean => memory.activateWindowScope === 'pseudo_channel' || c.sid === last.sid;
 
@@ -125,16 +146,12 @@ function demands(memory: MemoryGroup, log: readonly Command[]): [string, number 
 
   // ---- refreshes ---------------------------------------------------------------------------------------------------------------
   if (last.name === 'REFab' || last.name === 'REFpb') {
-    const refreshes = (bank: Bank): Command[] =>
-      before.filter((c) => samePc(c, last) && (c.name === 'REFab' || c.name === 'REFpb') && hits(c, bank));
     if (memory.refresh.mode !== 'off') {
-      const { postpone, pullIn } = memory.refresh;
-      const gaps = touched.map((bank) => (refreshes(bank).at(-1)?.ck ?? 0) + (postpone + 1) * at('tREFI'));
-      const done = touched.map((bank) => refreshes(bank).length);
-      const latest = (Math.min(...done) + 1 + postpone) * at('tREFI');
-      if (last.ck > Math.min(...gaps)) broken.push(['refresh gap', Math.min(...gaps)]);
+      const own = before.filter((c) => samePc(c, last));
+      const { widest, latest, most } = refreshBounds(memory, own, touched);
+      if (last.ck > widest) broken.push(['refresh gap', widest]);
       else if (last.ck > latest) broken.push(['refresh owed', latest]);
-      soonest('refresh ahead', (Math.max(...done) - pullIn) * at('tREFI'));
+      soonest('refresh ahead', (most - memory.refresh.pullIn) * at('tREFI'));
     }
     if (
       last.name === 'REFpb' &&
@@ -147,6 +164,28 @@ function demands(memory: MemoryGroup, log: readonly Command[]): [string, number 
       broken.push(['refresh order', null]);
   }
   return broken;
+}
+
+/** Does a command go to this bank of its pseudo-channel, alone or among others? */
+function reaches({ refresh }: MemoryGroup, c: Command, [sid, group, bank]: Bank): boolean {
+  if (isAll(c)) return refresh.scope === 'pseudo_channel' || c.sid === sid;
+  if (c.name === 'PREA') return c.sid < 0 || c.sid === sid;
+  return c.sid === sid && c.group === group && c.bank === bank;
+}
+
+/** Until when the next refresh of `banks` may wait, by the gap and by what is owed, after the commands of a pseudo-channel. */
+function refreshBounds(memory: MemoryGroup, own: readonly Command[], banks: readonly Bank[]) {
+  const { postpone } = memory.refresh;
+  const interval = memory.timings.tREFI.ck;
+  const refreshes = banks.map((bank) =>
+    own.filter((c) => (c.name === 'REFab' || c.name === 'REFpb') && reaches(memory, c, bank)),
+  );
+  const done = refreshes.map((list) => list.length);
+  return {
+    widest: Math.min(...refreshes.map((list) => list.at(-1)?.ck ?? 0)) + (postpone + 1) * interval,
+    latest: (Math.min(...done) + 1 + postpone) * interval,
+    most: Math.max(...done), // refreshes of the bank that has had most
+  };
 }
 
 function allBanks({ organisation: o }: MemoryGroup): Bank[] {
