@@ -2,7 +2,8 @@
 import { open } from 'node:fs/promises';
 import type { Data, RecordBatch, Vector } from 'apache-arrow';
 import { InputError } from '../errors.js';
-import type { BlockColumn, ColumnBlock } from './column-rows.js';
+import type { ColumnBlock } from './column-rows.js';
+import type { BlockColumn } from './column-values.js';
 import type { ColumnFile } from './parquet.js';
 
 /** Opens an Arrow IPC file (the file format, not a stream). Throws InputError when it is none. */

@@ -5,7 +5,7 @@
 import { Readable } from 'node:stream';
 import { type AccessBatch, READ } from './batch.js';
 
-const GROUP_ROWS = 1 << 19; // rows of a Parquet row group and of an Arrow record batch: tens of megabytes while one is written
+const GROUP_ROWS = 1 << 17; // rows of a Parquet row group and of an Arrow record batch: a megabyte a column of 64-bit integers
 
 /** Columns of a stretch of rows, ready to be written. */
 interface Gathered {
