@@ -39,6 +39,14 @@ export const KINDS = {
     begins: (head: string) => TABLE_NAMES.some((name) => head.startsWith(`${tableHead(name)}\n`)),
   },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
+  kernelTrace: {
+    name: 'a kernel trace',
+    begins: (head: string) => {
+      const columns = columnsOf(head);
+      return ['kernel', 'read', 'write', 'read_pattern'].every((column) => columns.includes(column));
+    },
+  },
+  zstd: { name: 'a zstd file', begins: (head: string) => head.startsWith('\x28\xb5\x2f\xfd') },
   parquet: { name: 'a Parquet file', begins: (head: string) => head.startsWith('PAR1') },
   arrow: { name: 'an Arrow IPC file', begins: (head: string) => head.startsWith('ARROW1') },
 } as const;
@@ -189,9 +197,14 @@ function headOf(file: string): string {
   });
 }
 
-function isAccessTrace(head: string): boolean {
+/** Names in the header row of a trace. */
+function columnsOf(head: string): string[] {
   const first = head.split(/\r?\n/, 40).find((line) => line !== '' && !line.startsWith('#')) ?? '';
-  const columns = first.split(',').map((column) => column.trim().toLowerCase());
+  return first.split(',').map((column) => column.trim().toLowerCase());
+}
+
+function isAccessTrace(head: string): boolean {
+  const columns = columnsOf(head);
   return ['op', 'address', 'bytes'].every((column) => columns.includes(column));
 }
 

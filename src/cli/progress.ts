@@ -3,7 +3,7 @@ import bars from 'cli-progress';
 import type { Progress } from '../engine/index.js';
 import { formatCount, formatTime } from '../units.js';
 
-const QUIET_MS = 2000; // shorter work needs no progress
+export const QUIET_MS = 2000; // shorter work needs no progress
 const SCALE = 1000; // steps of the bar
 
 /** What is known of the whole when a run begins; Infinity where it is not known. */
@@ -71,7 +71,7 @@ export function describe({ requests, simulatedPs }: Progress, done: number, seco
   return `${Math.floor(100 * done)} %, ${rate}, ${simulated}, ${duration(left)} left`;
 }
 
-function duration(seconds: number): string {
+export function duration(seconds: number): string {
   if (seconds < 60) return `${seconds} s`;
   const minutes = Math.floor(seconds / 60);
   return minutes < 60 ? `${minutes} min ${seconds % 60} s` : `${Math.floor(minutes / 60)} h ${minutes % 60} min`;

@@ -27,6 +27,7 @@ export async function openArrow(file: string): Promise<ColumnFile> {
   if (reader.schema === undefined) throw bad(new Error('it has no schema'));
   return {
     names: reader.schema.fields.map((field) => field.name),
+    rows: Number.NaN, // the file says how many record batches it has, but not of how many rows
     async *blocks(wanted) {
       try {
         for await (const batch of reader as AsyncIterable<RecordBatch>) {

@@ -27,6 +27,8 @@ export interface AccessTrace {
   batches(): AsyncIterable<AccessBatch>;
   /** Known once the batches have ended. */
   facts(): TraceFacts;
+  /** How much of the file has been read, 0 to 1; NaN where its length is not known. */
+  fraction?(): number;
 }
 
 export interface TraceFacts {

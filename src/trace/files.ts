@@ -21,7 +21,7 @@ export async function openBytes(file: string, source: ByteSource): Promise<Async
 export async function openHashed(
   file: string,
   { input, expected, reuse = false }: ByteSource,
-): Promise<{ readonly bytes: AsyncIterable<Buffer>; readonly hash: FileHash }> {
+): Promise<{ readonly bytes: AsyncIterable<Buffer>; readonly hash: FileHash; fraction(): number }> {
   if (file === '-') {
     if (input === undefined) {
       throw new InputError({
@@ -32,13 +32,22 @@ export async function openHashed(
       });
     }
     const { bytes, hash } = hashed(input, file);
-    return { bytes: decode(bytes, file, 'by content'), hash };
+    return { bytes: decode(bytes, file, 'by content'), hash, fraction: () => Number.NaN };
   }
   const before = await mustBeFile(file, expected);
   const form = formOf(file);
   const ahead = reuse && form === 'plain' && before.isFile() && before.size >= WORTH_A_THREAD && HAS_THREAD;
   const { bytes, hash } = ahead ? readAhead(file) : hashed(createReadStream(file, { highWaterMark: CHUNK }), file);
-  return { bytes: decode(unchanged(bytes, file, before), file, form), hash };
+  let read = 0;
+  async function* counted(): AsyncGenerator<Buffer> {
+    for await (const chunk of bytes) {
+      read += chunk.length;
+      yield chunk;
+    }
+    await mustBeUnchanged(file, before);
+  }
+  const fraction = (): number => (before.isFile() && before.size > 0 ? Math.min(1, read / before.size) : Number.NaN);
+  return { bytes: decode(counted(), file, form), hash, fraction };
 }
 
 /** A hash that may be given up before it is known. */
@@ -90,12 +99,7 @@ export async function mustBeFile(file: string, expected: string): Promise<Stats>
   });
 }
 
-/** Passes the bytes of a file on and, behind the last, looks whether it is still the file that was opened. */
-async function* unchanged(bytes: AsyncGenerator<Buffer>, file: string, before: Stats): AsyncGenerator<Buffer> {
-  yield* bytes;
-  await mustBeUnchanged(file, before);
-}
-
+/** Throws InputError when a file is no longer what it was when it was opened. */
 async function mustBeUnchanged(file: string, before: Stats): Promise<void> {
   if (!before.isFile()) return; // a pipe or a device has neither size nor age
   const now = await stat(file).catch(() => null); // removed meanwhile: what was open was read whole

@@ -50,7 +50,7 @@ export async function openTrace(file: string, options: TraceOptions = {}): Promi
     const columns = openColumns === 'parquet' ? await openParquet(file) : await openArrow(file);
     return openColumnFile(file, columns, options, hashOf(file, before));
   }
-  const { bytes, hash } = await openHashed(file, { input: options.input, expected, reuse: true });
+  const { bytes, hash, fraction } = await openHashed(file, { input: options.input, expected, reuse: true });
   const source = bytes[Symbol.asyncIterator]();
   const shape = options.shape ?? OWN_SHAPE;
   const tolerance = new Tolerance(options.skipBadRows ?? 0);
@@ -64,7 +64,11 @@ export async function openTrace(file: string, options: TraceOptions = {}): Promi
       const header = readHeader(row, head.line, file, shape);
       if (header.kind === 'access') {
         const reading = startReading(file, header, tolerance, options, hash);
-        return await accessTrace(reading, readPlain(reading, source, head.data.subarray(head.end), head.line + 1));
+        return await accessTrace(
+          reading,
+          readPlain(reading, source, head.data.subarray(head.end), head.line + 1),
+          fraction,
+        );
       }
     }
     // a kernel trace, or one that begins with something odd
@@ -73,7 +77,7 @@ export async function openTrace(file: string, options: TraceOptions = {}): Promi
     const rows = withBlock(rest, blocks);
     if (header.kind === 'access') {
       const reading = startReading(file, header, tolerance, options, hash);
-      return await accessTrace(reading, readBlocks(reading, rows));
+      return await accessTrace(reading, readBlocks(reading, rows), fraction);
     }
     const { dieNames = [], geometry = [] } = options;
     return await readKernels(file, header, rows, tolerance, dieNames, geometry, hash);
@@ -104,7 +108,11 @@ async function openColumnFile(
     const wanted = [...new Set([...header.at.values()].filter((at) => at < header.names.length))].map(
       (at) => header.names[at],
     );
-    return await accessTrace(reading, closing(readColumns(reading, columns.blocks(wanted)), hash));
+    return await accessTrace(
+      reading,
+      closing(readColumns(reading, columns.blocks(wanted)), hash),
+      () => reading.facts.rows / columns.rows,
+    );
   } catch (error) {
     await hash.close();
     throw error;
@@ -139,6 +147,7 @@ function startReading(
 async function accessTrace(
   { file, access, facts }: Reading,
   batches: AsyncGenerator<AccessBatch, undefined>,
+  fraction: () => number,
 ): Promise<AccessTrace> {
   const first = await batches.next();
   let begun = false;
@@ -158,6 +167,7 @@ async function accessTrace(
       }
     },
     facts: () => ({ ...facts }),
+    fraction,
   };
 }
 

@@ -6,6 +6,7 @@ import type { BlockColumn } from './column-values.js';
 /** A file of columns, opened: its column names, and its rows in blocks. */
 export interface ColumnFile {
   readonly names: readonly string[];
+  readonly rows: number; // NaN where they are not known beforehand
   blocks(wanted: readonly string[]): AsyncIterable<ColumnBlock>;
 }
 
@@ -28,6 +29,7 @@ export async function openParquet(file: string): Promise<ColumnFile> {
   const names = parquetSchema(metadata).children.map((child) => child.element.name);
   return {
     names,
+    rows: Number(metadata.num_rows),
     async *blocks(wanted) {
       let rowStart = 0;
       for (const group of metadata.row_groups) {
