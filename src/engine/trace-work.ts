@@ -34,6 +34,7 @@ export class TraceWork implements Work {
 
   private readonly iterator: AsyncIterator<AccessBatch>;
   private ended = false;
+  private allDealt = false; // the trace has ended, and every row is with its engine
   private readonly store: RowStore; // rows read and not yet dealt
   private readonly rows: RowStore[]; // per engine: dealt and not yet issued
   private readonly stores: RowStore[]; // per engine: stores that wait for their tile
@@ -294,6 +295,10 @@ export class TraceWork implements Work {
       this.rows[engine].copyFrom(store, at);
       store.drop();
     }
+    if (!this.ended || this.allDealt) return;
+    // the last row of each engine is known from here on, and with it the end of its last tile
+    this.allDealt = true;
+    for (let e = 0; e < this.rows.length; e++) if (this.tileOpen[e] === 1) this.runnable.wake(e);
   }
 
   /** Whether the head row's time has come under the replay mode; sets an alarm when not. */

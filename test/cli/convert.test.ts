@@ -57,7 +57,7 @@ test('what cannot be done leaves nothing behind', async () => {
   const form = await penstock(['convert', trace, folder.at('trace.xls')]);
   expect(form).toMatchObject({
     code: 2,
-    err: expect.stringContaining('expected one that ends in .csv, .csv.gz, .parquet or .arrow'),
+    err: expect.stringContaining('expected one that ends in .csv, .csv.gz, .csv.zst, .parquet or .arrow'),
   });
   writeFileSync(folder.at('mine.arrow'), 'precious');
   const other = await penstock(['convert', trace, folder.at('mine.arrow')]);
