@@ -77,6 +77,47 @@ export const parseLength = (text: string, where: Where): number => parse(text, L
 export const parseTemperature = (text: string, where: Where): number =>
   parse(text, TEMPERATURE, where, 'a temperature');
 
+/** What a quantity is of; 'number' has no unit. */
+export type QuantityKind = keyof typeof KINDS | 'number';
+
+const KINDS = {
+  time: TIME,
+  size: SIZE,
+  bandwidth: { 'B/s': 1, 'kB/s': 1e3, 'MB/s': 1e6, 'GB/s': 1e9, 'TB/s': 1e12 },
+  frequency: FREQUENCY,
+  'transfer rate': TRANSFERS,
+  work: FLOPS,
+  'compute rate': { 'FLOP/s': 1, ...FLOP_RATE },
+  length: LENGTH,
+  temperature: TEMPERATURE,
+  clocks: { ck: 1 },
+  power: { mW: 1e-3, W: 1, kW: 1e3 },
+  energy: { pJ: 1, nJ: 1e3, uJ: 1e6, mJ: 1e9, J: 1e12 },
+  'energy per bit': { 'fJ/bit': 1e-3, 'pJ/bit': 1 },
+} as const satisfies Record<string, Units>;
+
+/** Every unit with the kind of quantity it belongs to and its factor; `%` is a number. */
+export const UNITS: ReadonlyMap<string, readonly [kind: QuantityKind, factor: number]> = new Map([
+  ['%', ['number', 0.01]] as const,
+  ...Object.entries(KINDS).flatMap(([kind, units]) =>
+    Object.entries(units).map(([unit, factor]) => [unit, [kind as QuantityKind, factor]] as const),
+  ),
+]);
+
+export interface Quantity {
+  readonly value: number; // in the base unit of its kind: ps, B, B/s, Hz, transfers/s, FLOP, mm, C, ck, W, pJ, pJ/bit
+  readonly kind: QuantityKind;
+}
+
+/** A quantity of whatever kind, or a plain number; null when the text is neither. */
+export function parseQuantity(text: string): Quantity | null {
+  const match = QUANTITY.exec(text.trim());
+  if (match === null) return null;
+  if (match[2] === '') return { value: Number(match[1]), kind: 'number' };
+  const unit = UNITS.get(match[2]);
+  return unit === undefined ? null : { value: clean(Number(match[1]) * unit[1]), kind: unit[0] };
+}
+
 /** Work in FLOP; a plain number counts operations and needs no unit. */
 export function parseFlops(text: string, where: Where): number {
   const plain = Number(text);

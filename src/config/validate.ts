@@ -3,14 +3,19 @@ import { InputError, nearest } from '../errors.js';
 import { isQuantity, type PackageFile, packageFile } from './schema.js';
 import { locate, type Path, plain, subtree, type Tree } from './tree.js';
 
-/** Checks a document against the schema; the first thing wrong is thrown with its place. */
+/** Checks a package file against its schema; the first thing wrong is thrown with its place. */
 export function validate(tree: Tree): PackageFile {
+  return validateAs(tree, packageFile);
+}
+
+/** Checks a document against a schema; the first thing wrong is thrown with its place. */
+export function validateAs<T extends z.ZodType>(tree: Tree, schema: T): z.infer<T> {
   refuseProto(tree, []);
-  const answer = packageFile.safeParse(plain(tree));
+  const answer = schema.safeParse(plain(tree));
   if (answer.success) return answer.data;
   // a misspelt key is the likelier cause than the one that is then missing
   const { issues } = answer.error;
-  throw explain(tree, issues.find(({ code }) => code === 'unrecognized_keys') ?? issues[0]);
+  throw explain(tree, schema, issues.find(({ code }) => code === 'unrecognized_keys') ?? issues[0]);
 }
 
 /** JavaScript keeps this one name for itself, so the schema would pass over it: what is written would not be what is meant. */
@@ -25,13 +30,13 @@ function refuseProto(tree: Tree, path: Path): void {
   }
 }
 
-function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
+function explain(tree: Tree, schema: z.ZodType, issue: z.core.$ZodIssue): InputError {
   const path = issue.path as Path;
   const found = describe(subtree(tree, path));
   switch (issue.code) {
     case 'unrecognized_keys': {
       const [key] = issue.keys;
-      const known = keysAt(path);
+      const known = keysAt(path, schema);
       const like = nearest(key, known);
       return new InputError({
         where: locate(tree, [...path, key], true),
@@ -55,7 +60,7 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
       return new InputError({
         where: locate(tree, path),
         found,
-        expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${mostAt(path) ?? issue.maximum}`,
+        expected: `${issue.origin === 'array' ? 'a list of at most' : 'at most'} ${mostAt(path, schema) ?? issue.maximum}`,
       });
     case 'invalid_format':
       return new InputError({
@@ -73,7 +78,7 @@ function explain(tree: Tree, issue: z.core.$ZodIssue): InputError {
             : 'the name of a number format, for example bf16',
       });
     default: {
-      const expected = 'expected' in issue ? wording(String(issue.expected), path) : issue.message;
+      const expected = 'expected' in issue ? wording(String(issue.expected), path, schema) : issue.message;
       return new InputError({ where: locate(tree, path), found, expected });
     }
   }
@@ -88,7 +93,7 @@ const FORMATS: Readonly<Record<string, string>> = {
 const WORDS: Readonly<Record<string, string>> = {
   string: 'text',
   int: 'a whole number',
-  number: 'a whole number', // the schema has no others
+  number: 'a number',
   object: 'a map of keys',
   array: 'a list',
   record: 'a map of keys',
@@ -96,10 +101,13 @@ const WORDS: Readonly<Record<string, string>> = {
 };
 
 /** What kind of value would do, and what the schema says of it. */
-function wording(expected: string, path: Path): string {
-  const type = typeAt(path);
+function wording(expected: string, path: Path, schema: z.ZodType): string {
+  const type = typeAt(path, schema);
+  const whole = expected === 'number' && (schema as z.ZodType) === packageFile; // the package's schema has no others
   const kind =
-    type !== undefined && isQuantity(unwrap(type)) ? 'a quantity with its unit' : (WORDS[expected] ?? expected);
+    type !== undefined && isQuantity(unwrap(type))
+      ? 'a quantity with its unit'
+      : (WORDS[whole ? 'int' : expected] ?? expected);
   const about = type === undefined ? undefined : descriptionOf(type);
   return about === undefined ? kind : `${kind}: ${about}`;
 }
@@ -112,21 +120,21 @@ function describe(tree: Tree | undefined): string {
   return typeof tree.value === 'string' ? `'${tree.value}'` : (tree.text ?? String(tree.value));
 }
 
-/** The keys the schema knows at a path. */
-export function keysAt(path: Path): string[] {
-  const type = typeAt(path);
+/** The keys a schema, the package's by default, knows at a path. */
+export function keysAt(path: Path, schema: z.ZodType = packageFile): string[] {
+  const type = typeAt(path, schema);
   return type === undefined ? [] : Object.keys(partsOf(type).shape ?? {});
 }
 
 /** Whether a path leads to a map whose keys are the user's own. */
 export function isOpenMap(path: Path): boolean {
-  const type = typeAt(path);
+  const type = typeAt(path, packageFile);
   return type !== undefined && partsOf(type).valueType !== undefined;
 }
 
 /** The greatest number the schema takes at a path; for one beyond all whole numbers the issue would name another limit. */
-function mostAt(path: Path): number | undefined {
-  const type = typeAt(path);
+function mostAt(path: Path, schema: z.ZodType): number | undefined {
+  const type = typeAt(path, schema);
   return type === undefined ? undefined : ((unwrap(type) as z.ZodNumber).maxValue ?? undefined);
 }
 
@@ -137,8 +145,8 @@ interface Parts {
 }
 const partsOf = (type: z.core.$ZodType): Parts => unwrap(type)._zod.def as Parts;
 
-function typeAt(path: Path): z.core.$ZodType | undefined {
-  let at: z.core.$ZodType | undefined = packageFile;
+function typeAt(path: Path, schema: z.core.$ZodType): z.core.$ZodType | undefined {
+  let at: z.core.$ZodType | undefined = schema;
   for (const step of path) {
     const { shape, element, valueType }: Parts = partsOf(at);
     at = shape !== undefined && Object.hasOwn(shape, step) ? shape[step] : (element ?? valueType);
