@@ -14,6 +14,8 @@ interface Definition<P extends Record<string, PositionalOptions>, O extends Reco
   readonly positionals: P;
   readonly options: O;
   readonly examples: readonly (readonly [command: string, does: string])[];
+  /** Commands of two words: their usage begins with the second. */
+  readonly subcommands?: readonly Command[];
   /** Does the work. What it throws decides the exit code; Session.exitCode does otherwise. */
   readonly main: (args: InferredOptionTypes<P> & InferredOptionTypes<O>, session: Session) => Promise<void>;
 }
@@ -21,11 +23,12 @@ interface Definition<P extends Record<string, PositionalOptions>, O extends Reco
 export function command<P extends Record<string, PositionalOptions>, O extends Record<string, Options>>(
   definition: Definition<P, O>,
 ): Command {
-  const { usage, about, positionals, options, examples, main } = definition;
+  const { usage, about, positionals, options, examples, main, subcommands = [] } = definition;
   const single = Object.keys(options).filter((name) => !options[name].array);
   return {
     name: usage.split(' ')[0],
     usage,
+    subcommands,
     options: Object.keys(options),
     letters: Object.fromEntries(
       Object.entries(options).flatMap(([name, { alias }]) => (typeof alias === 'string' ? [[alias, name]] : [])),
@@ -35,12 +38,16 @@ export function command<P extends Record<string, PositionalOptions>, O extends R
         usage,
         about,
         (own) => {
+          for (const sub of subcommands) sub.add(own, session);
           for (const [name, positional] of Object.entries(positionals)) {
             own.positional(name, positional);
             if (!('array' in positional)) own.nargs(name, 1); // so that - is a value too
           }
           return own
-            .options(options)
+            .options(
+              // a command's options are not those of the commands below it
+              Object.fromEntries(Object.entries(options).map(([name, option]) => [name, { ...option, global: false }])),
+            )
             .epilogue(`Examples:\n${examples.map(([line, does]) => `  # ${does}\n  penstock ${line}`).join('\n')}`)
             .check((args) => {
               const twice = single.find((name) => Array.isArray(args[name]));

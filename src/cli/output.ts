@@ -38,6 +38,15 @@ export const KINDS = {
     name: 'a penstock table',
     begins: (head: string) => TABLE_NAMES.some((name) => head.startsWith(`${tableHead(name)}\n`)),
   },
+  sweep: { name: 'points of a sweep', begins: (head: string) => head.startsWith('{"format":"penstock-sweep"') },
+  sweepRuns: {
+    name: 'a sweep’s table of runs',
+    begins: (head: string) => head.startsWith('point,configuration,package,trace,'),
+  },
+  sweepConfigurations: {
+    name: 'a sweep’s table of configurations',
+    begins: (head: string) => head.startsWith('configuration,package,trace,'),
+  },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
   kernelTrace: {
     name: 'a kernel trace',

@@ -1,10 +1,7 @@
-/** Progress on standard error: only where someone looks at it, and only for what takes longer than two seconds. */
-import bars from 'cli-progress';
+/** Progress of one run on standard error. */
 import type { Progress } from '../engine/index.js';
 import { formatCount, formatTime } from '../units.js';
-
-export const QUIET_MS = 2000; // shorter work needs no progress
-const SCALE = 1000; // steps of the bar
+import { Bar, duration } from './bar.js';
 
 /** What is known of the whole when a run begins; Infinity where it is not known. */
 export interface Whole {
@@ -14,51 +11,25 @@ export interface Whole {
 
 /** Shows how far a run is. Give `show` to the engine and call `stop` before anything else is printed. */
 export class ProgressBar {
-  private readonly startMs = performance.now();
-  private bar: bars.SingleBar | null = null;
-
-  constructor(
+  private constructor(
     private readonly whole: Whole,
-    private readonly stream: NodeJS.WriteStream,
-    private readonly colour: boolean,
+    private readonly bar: Bar,
   ) {}
 
   /** Null where standard error is not a terminal. */
   static on(stream: NodeJS.WriteStream, whole: Whole, env: NodeJS.ProcessEnv): ProgressBar | null {
-    const { NO_COLOR, TERM } = env;
-    if (stream.isTTY !== true || TERM === 'dumb') return null;
-    return new ProgressBar(whole, stream, !NO_COLOR);
+    const bar = Bar.on(stream, env);
+    return bar === null ? null : new ProgressBar(whole, bar);
   }
 
   readonly show = (progress: Progress): void => {
-    const seconds = (performance.now() - this.startMs) / 1000;
-    if (seconds * 1000 < QUIET_MS) return;
     const done = Math.min(1, Math.max(progress.bytes / this.whole.bytes, progress.simulatedPs / this.whole.untilPs));
-    const text = describe(progress, done, seconds);
-    if (this.bar === null) {
-      this.bar = new bars.SingleBar({
-        format: (options, params, payload) =>
-          done > 0 || params.value > 0
-            ? `${paint(bars.Format.BarFormat(params.progress, options), this.colour)} ${payload.text}`
-            : payload.text,
-        barsize: 24,
-        barCompleteString: '='.repeat(24),
-        barIncompleteString: '-'.repeat(24),
-        stream: this.stream,
-        fps: 5,
-        clearOnComplete: true,
-        hideCursor: true,
-        gracefulExit: false, // interrupts are main's
-        emptyOnZero: true,
-      });
-      this.bar.start(SCALE, Math.floor(done * SCALE), { text });
-    } else this.bar.update(Math.floor(done * SCALE), { text });
+    this.bar.show(done, (seconds) => describe(progress, done, seconds));
   };
 
   /** Takes the bar off the screen. */
   stop(): void {
-    this.bar?.stop();
-    this.bar = null;
+    this.bar.stop();
   }
 }
 
@@ -69,14 +40,4 @@ export function describe({ requests, simulatedPs }: Progress, done: number, seco
   if (done <= 0) return `${formatCount(requests)} requests, ${rate}, ${simulated}`;
   const left = Math.ceil((seconds * (1 - done)) / done);
   return `${Math.floor(100 * done)} %, ${rate}, ${simulated}, ${duration(left)} left`;
-}
-
-export function duration(seconds: number): string {
-  if (seconds < 60) return `${seconds} s`;
-  const minutes = Math.floor(seconds / 60);
-  return minutes < 60 ? `${minutes} min ${seconds % 60} s` : `${Math.floor(minutes / 60)} h ${minutes % 60} min`;
-}
-
-function paint(text: string, colour: boolean): string {
-  return colour ? `\u001b[36m${text}\u001b[0m` : text;
 }

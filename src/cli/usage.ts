@@ -11,6 +11,7 @@ export interface Usable {
   readonly name: string; // 'run'
   readonly usage: string; // 'run <trace>'
   readonly options: readonly string[]; // names without dashes, 'help' and 'version' not among them
+  readonly subcommands?: readonly Usable[]; // commands of two words
   readonly letters: Readonly<Record<string, string>>; // one-letter forms and the option each stands for
 }
 
@@ -20,10 +21,17 @@ const EVERYWHERE = ['help', 'version'];
  * Words a complaint of the parser for the user. `argv` is the command line after the program's name, `commands` all there are.
  */
 export function usageError(complaint: string, argv: readonly string[], commands: readonly Usable[]): UsageError {
-  const command = commands.find(({ name }) => name === argv[0]);
+  const first = commands.find(({ name }) => name === argv[0]);
+  const second = first?.subcommands?.find(({ name }) => name === argv[1]);
+  const command = first === undefined || second === undefined ? first : belowOf(first, second);
   const problem = command === undefined ? noCommand(argv, commands) : inCommand(complaint, argv, command);
   const help = command === undefined ? 'penstock --help' : `penstock ${command.name} --help`;
   return new UsageError(`penstock: ${problem}${problem.endsWith('?') ? '' : '.'} See ${help}`);
+}
+
+/** A command of two words, as one. */
+function belowOf(first: Usable, second: Usable): Usable {
+  return { ...second, name: `${first.name} ${second.name}`, usage: `${first.name} ${second.usage}` };
 }
 
 function noCommand(argv: readonly string[], commands: readonly Usable[]): string {
@@ -36,7 +44,11 @@ function noCommand(argv: readonly string[], commands: readonly Usable[]): string
   return `there is no command '${word}'; ${like === undefined ? list : `did you mean '${like}'?`}`;
 }
 
-function inCommand(complaint: string, argv: readonly string[], { name, usage, options, letters }: Usable): string {
+function inCommand(
+  complaint: string,
+  argv: readonly string[],
+  { name, usage, options, letters, subcommands = [] }: Usable,
+): string {
   const all = [...options, ...EVERYWHERE];
   // a misspelt option is the cause of whatever else is missing
   const strange = optionsIn(argv).find((given) =>
@@ -49,6 +61,12 @@ function inCommand(complaint: string, argv: readonly string[], { name, usage, op
   }
   const [, unknown] = /^Unknown arguments?: (.*)$/.exec(complaint) ?? [];
   if (unknown !== undefined) {
+    const word = argv[1] ?? '';
+    const like = nearest(
+      word,
+      subcommands.map((sub) => sub.name),
+    );
+    if (like !== undefined) return `${name}: found '${word}'; did you mean '${name} ${like}'?`;
     return `${name}: found '${unknown.split(', ')[0]}', which is one argument too many; expected ${usage}`;
   }
   const [, missing] = /^Missing required arguments?: (.*)$/.exec(complaint) ?? [];

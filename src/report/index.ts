@@ -7,9 +7,21 @@
  */
 export { csvTable, TABLE_NAMES, type TableName, tableHead } from './csv.js';
 export { descriptionReport } from './describe.js';
+export {
+  fails,
+  type GateCause,
+  type GateComparison,
+  type GateRow,
+  type GateTable,
+  type GateVerdict,
+} from './gate-table.js';
 export { htmlReport } from './html/index.js';
 export { jsonReport, prettyJson } from './json.js';
 export { profileReport } from './profile.js';
 export { rooflineReport } from './roofline.js';
 export { ink, plain, type TextStyle, table, wrap } from './style.js';
+export { sweepReport } from './sweep.js';
+export { sweepConfigurationsCsv, sweepRunsCsv } from './sweep-csv.js';
+export { sweepParquet } from './sweep-parquet.js';
+export type { SweepConfiguration, SweepEffect, SweepRun, SweepTable } from './sweep-table.js';
 export { textReport } from './text.js';

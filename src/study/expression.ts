@@ -14,6 +14,7 @@ export type Value = Quantity | string;
 
 export interface Expression {
   readonly text: string;
+  readonly where: Where;
   readonly names: readonly string[]; // the values it asks for
   /** The number it comes to, in the base unit of its kind; a condition is 1 or 0, NaN when a value it needs is missing. */
   evaluate(values: (name: string) => Value | undefined): number;
@@ -89,6 +90,7 @@ export function parseExpression(text: string, known: (name: string) => string | 
   if (tokens[next].kind !== 'end') throw wrong(tokens[next], 'and, or, a comparison, + - * / or its end');
   return {
     text,
+    where,
     names: [...names],
     evaluate: (values) => {
       const value = root(values);
