@@ -47,6 +47,9 @@ export const KINDS = {
     name: 'a sweep’s table of configurations',
     begins: (head: string) => head.startsWith('configuration,package,trace,'),
   },
+  gate: { name: 'a gate’s JSON', begins: (head: string) => /^\{\s*"format":\s*"penstock-gate"/.test(head) },
+  markdown: { name: 'a gate’s Markdown', begins: (head: string) => /^### (Same|Better|Worse|Changed): /.test(head) },
+  junit: { name: 'JUnit XML', begins: (head: string) => head.startsWith('<?xml') && head.includes('<testsuites ') },
   accessTrace: { name: 'an access trace', begins: isAccessTrace },
   kernelTrace: {
     name: 'a kernel trace',

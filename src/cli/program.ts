@@ -4,6 +4,7 @@ import { VERSION } from '../index.js';
 import { audit } from './commands/audit.js';
 import { convert } from './commands/convert.js';
 import { describe } from './commands/describe.js';
+import { gate } from './commands/gate.js';
 import { profile } from './commands/profile.js';
 import { roofline } from './commands/roofline.js';
 import { run } from './commands/run.js';
@@ -13,7 +14,7 @@ import { synth } from './commands/synth.js';
 import type { Session } from './session.js';
 import { usageError } from './usage.js';
 
-const COMMANDS = [run, roofline, sweep, describe, profile, synth, convert, audit, schema];
+const COMMANDS = [run, roofline, sweep, gate, describe, profile, synth, convert, audit, schema];
 const WIDTH = 100; // columns of the help, at most
 
 /** Understands the words after the program's name and does what they ask. Throws UsageError, or what the command throws. */
@@ -45,7 +46,7 @@ export async function program(argv: readonly string[], session: Session): Promis
       throw own ? error : usageError(complaint ?? error.message, argv, COMMANDS);
     })
     .epilogue(
-      'Exit codes: 0 fine, 1 the audit found violations, 2 the input is wrong, 3 the program’s own checks\nfailed, 4 the system failed, 130 interrupted.',
+      'Exit codes: 0 fine, 1 the gate found worse or the audit violations, 2 the input is wrong, 3 the\nprogram’s own checks failed, 4 the system failed, 130 interrupted.',
     );
   for (const command of COMMANDS) command.add(cli, session);
   await cli.parseAsync();

@@ -4,14 +4,14 @@ import { type SweepTable, sweepConfigurationsCsv, sweepParquet, sweepRunsCsv } f
 import { OutputFile } from './output.js';
 
 /** Writes the tables into the folder, all or none. Returns their names. */
-export function writeTables(folder: string, table: SweepTable): string[] {
+export async function writeTables(folder: string, table: SweepTable): Promise<string[]> {
   const files = [
     ['runs.csv', 'sweepRuns', () => sweepRunsCsv(table)],
     ['configurations.csv', 'sweepConfigurations', () => sweepConfigurationsCsv(table)],
     ['runs.parquet', 'parquet', () => sweepParquet(table)],
   ] as const;
   const open = files.map(([name, kind, make]) => [new OutputFile(join(folder, name), kind), make] as const);
-  for (const [file, make] of open) file.write(make());
+  for (const [file, make] of open) file.write(await make());
   for (const [file] of open) file.commit();
   return files.map(([name]) => name);
 }

@@ -7,6 +7,9 @@
  */
 export { csvTable, TABLE_NAMES, type TableName, tableHead } from './csv.js';
 export { descriptionReport } from './describe.js';
+export { gateReport } from './gate.js';
+export { gateJunit } from './gate-junit.js';
+export { gateMarkdown } from './gate-markdown.js';
 export {
   fails,
   type GateCause,

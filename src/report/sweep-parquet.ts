@@ -1,9 +1,9 @@
-import { parquetWriteBuffer } from 'hyparquet-writer';
 import { sweepColumns } from './sweep-csv.js';
 import type { SweepTable } from './sweep-table.js';
 
 /** The runs as a Parquet file: the columns of the runs table with their types. */
-export function sweepParquet(table: SweepTable): Uint8Array {
+export async function sweepParquet(table: SweepTable): Promise<Uint8Array> {
+  const { parquetWriteBuffer } = await import('hyparquet-writer'); // only who writes one waits for it to load
   const columnData = sweepColumns(table).map(({ name, type, values }) => ({
     name,
     type,

@@ -26,5 +26,5 @@ export {
 } from './record.js';
 export { parseShard, slurmShard } from './shard-of.js';
 export { tableOf } from './table.js';
-export { DEFAULT_TOLERANCES, gateJsonSchema, parseTolerances } from './tolerances.js';
+export { DEFAULT_TOLERANCES, gateJsonSchema, parseTolerances, type Tolerances } from './tolerances.js';
 export { tryValues } from './try-values.js';

@@ -13,7 +13,7 @@ const TRACE = join(ROOT, 'traces/wagtail-step.csv');
 
 /** What must be refused: the arguments, the exit code, and what the message must say. */
 const REFUSED: readonly (readonly [name: string, args: readonly string[], code: number, says: readonly string[]])[] = [
-  ['no arguments', [], 2, ['no command', 'run, roofline, describe', 'penstock --help']],
+  ['no arguments', [], 2, ['no command', 'run, roofline, sweep', 'penstock --help']],
   ['an unknown command', ['rnu', TRACE], 2, ["no command 'rnu'", "did you mean 'run'?"]],
   ['an option in place of a command', ['--json', 'x'], 2, ['--json', 'a command first']],
   ['an unknown option', ['run', TRACE, '-p', WAGTAIL, '--sed', '4'], 2, ['no option --sed', 'did you mean --se']],

@@ -1,14 +1,14 @@
 /** `penstock schema`: the JSON Schemas of what the program reads and writes, for editors and for other programs. */
 import { resultJsonSchema } from '../../analysis/index.js';
 import { packageJsonSchema } from '../../config/index.js';
-import { planJsonSchema } from '../../study/index.js';
+import { gateJsonSchema, planJsonSchema } from '../../study/index.js';
 import { command } from '../command.js';
 
-const SCHEMAS = { package: packageJsonSchema, result: resultJsonSchema, sweep: planJsonSchema };
+const SCHEMAS = { package: packageJsonSchema, result: resultJsonSchema, sweep: planJsonSchema, gate: gateJsonSchema };
 
 export const schema = command({
   usage: 'schema <document>',
-  about: 'print the JSON Schema of a package file, of the result document or of a sweep plan',
+  about: 'print the JSON Schema of a package file, of the result document, of a sweep plan or of tolerances',
   positionals: {
     document: {
       type: 'string',

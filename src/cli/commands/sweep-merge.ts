@@ -48,7 +48,7 @@ export const sweepMerge = command({
     journal.join();
     const records = journal.records();
     const table = tableOf(whole.plan, records, VERSION, whole.points.length);
-    const files = writeTables(folder, table);
+    const files = await writeTables(folder, table);
     await session.print(`${sweepReport(table, session)}Results: ${folder}/ (sweep.jsonl, ${files.join(', ')})\n`);
     session.exitCode = codeOf(records);
   },

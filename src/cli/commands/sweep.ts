@@ -65,7 +65,7 @@ export const sweep = command({
     if (shard !== null && shard.n > 1) await sliceReport(slice, records, shard, folder, session);
     else {
       journal.join();
-      const files = writeTables(folder, table);
+      const files = await writeTables(folder, table);
       await session.print(`${sweepReport(table, session)}Results: ${folder}/ (sweep.jsonl, ${files.join(', ')})\n`);
     }
     session.exitCode = codeOf(records.filter(({ point }) => slice.includes(point)));
