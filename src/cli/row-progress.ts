@@ -1,6 +1,6 @@
 /** Progress of work that goes over the rows of a trace: on standard error, where someone looks at it, after two seconds. */
 import { formatCount } from '../units.js';
-import { duration, QUIET_MS } from './progress.js';
+import { duration, QUIET_MS } from './bar.js';
 
 const EVERY_MS = 200;
 
