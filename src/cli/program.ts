@@ -11,10 +11,11 @@ import { run } from './commands/run.js';
 import { schema } from './commands/schema.js';
 import { sweep } from './commands/sweep.js';
 import { synth } from './commands/synth.js';
+import { whatif } from './commands/whatif.js';
 import type { Session } from './session.js';
 import { usageError } from './usage.js';
 
-const COMMANDS = [run, roofline, sweep, gate, describe, profile, synth, convert, audit, schema];
+const COMMANDS = [run, roofline, whatif, sweep, gate, describe, profile, synth, convert, audit, schema];
 const WIDTH = 100; // columns of the help, at most
 
 /** Understands the words after the program's name and does what they ask. Throws UsageError, or what the command throws. */

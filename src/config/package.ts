@@ -119,6 +119,7 @@ export interface ComputeDie {
 /** A full-duplex die-to-die link between a compute die and a stack; each direction is a server of its own. */
 export interface Link {
   readonly name: string;
+  readonly entry: number; // index in the package file's list, where one entry may make several links
   readonly die: number; // index into dies
   readonly stack: number; // global stack number; every stack has exactly one link
   readonly lanes: number; // per direction

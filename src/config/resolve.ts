@@ -100,7 +100,7 @@ function resolveLinks(
         });
       }
       const name = stacks.length === 1 ? link.name : `${link.name}.${stack - stacks[0]}`;
-      byStack.set(stack, resolveLink(link, name, die, stack, path, place));
+      byStack.set(stack, resolveLink(link, name, i, die, stack, path, place));
     }
   });
   const alike = sameName([...byStack.values()]);
@@ -143,6 +143,7 @@ function sameName(links: readonly Link[]): readonly [Link, Link] | null {
 function resolveLink(
   link: PackageFile['links'][number],
   name: string,
+  entry: number,
   die: number,
   stack: number,
   path: Path,
@@ -181,6 +182,7 @@ function resolveLink(
   }
   return {
     name,
+    entry,
     die,
     stack,
     lanes: link.lanes,

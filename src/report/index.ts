@@ -28,3 +28,4 @@ export { sweepConfigurationsCsv, sweepRunsCsv } from './sweep-csv.js';
 export { sweepParquet } from './sweep-parquet.js';
 export type { SweepConfiguration, SweepEffect, SweepRun, SweepTable } from './sweep-table.js';
 export { textReport } from './text.js';
+export { type WhatIfFigures, type WhatIfSource, whatIfReport } from './whatif.js';
