@@ -76,7 +76,7 @@ function saved({ saved_ps, saved_ratio }: Row): string {
   return `${signedTime(saved_ps)} (${signedPercent(saved_ratio)})`;
 }
 
-function rows({ lifted, everything, makespan_ps, data_ps, binds }: WhatIfFigures, { chalk }: Ink): string {
+function rows({ lifted, everything, makespan_ps, data_ps, binds }: WhatIfFigures, { chalk, width }: Ink): string {
   const row = (name: string, r: Row): string[] => [
     name,
     formatTime(r.makespan_ps),
@@ -86,15 +86,20 @@ function rows({ lifted, everything, makespan_ps, data_ps, binds }: WhatIfFigures
     formatBandwidth(r.achieved_bytes_per_s),
     bound(r.binds),
   ];
+  // what changes next to nothing shares a line
+  const shown = lifted.filter(({ saved_ratio }) => Math.abs(saved_ratio) >= WORTH);
+  const idle = lifted.filter((r) => !shown.includes(r)).map(({ label }) => label);
   const body = [
     ['as it is', formatTime(makespan_ps), '', '', ' '.repeat(CELLS), '', bound(binds)],
-    ...lifted.map((r) => row(r.label, r)),
+    ...shown.map((r) => row(r.label, r)),
     ...(everything === null ? [] : [row('all of these', everything)]),
     ['data alone, at peak', formatTime(data_ps), '', '', '', '', ''],
   ];
+  const rest =
+    idle.length === 0 ? [] : [wrap(`  less than ${formatPercent(WORTH)} each: ${idle.join(', ')}`, width, '  ')];
   const text = table(['Without', 'time', 'saved', '', '', 'bandwidth', 'then binds'], body, [4, 6]);
-  const [first, ...rest] = text.split('\n');
-  return [chalk.bold(first.slice(2)), ...rest].join('\n');
+  const [first, ...lines] = text.split('\n');
+  return [chalk.bold(first.slice(2)), ...lines, ...rest].join('\n');
 }
 
 function pairs({ pairs: all, makespan_ps }: WhatIfFigures, { chalk }: Ink): string[] {
@@ -122,4 +127,5 @@ function signedPercent(ratio: number): string {
   return ratio < 0 ? `-${formatPercent(-ratio)}` : formatPercent(ratio);
 }
 
-const bound = (binds: string): string => binds.replace('starved_', '').replaceAll('_', ' ');
+const bound = (binds: string): string =>
+  binds === 'nothing' ? 'no single limit' : binds.replace('starved_', '').replaceAll('_', ' ');

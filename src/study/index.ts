@@ -10,6 +10,7 @@
 export { checkQuestions } from './cheapest.js';
 export { dealt, dearestFirst, type Shard, traceCost } from './cost.js';
 export { type GateInput, gate } from './gate.js';
+export { LIMITS, type Limit } from './limits.js';
 export { type Plan, parsePlan, withQuestions } from './plan.js';
 export { planJsonSchema } from './plan-schema.js';
 export { type Point, pointsOf } from './points.js';
@@ -28,3 +29,4 @@ export { parseShard, slurmShard } from './shard-of.js';
 export { tableOf } from './table.js';
 export { DEFAULT_TOLERANCES, gateJsonSchema, parseTolerances, type Tolerances } from './tolerances.js';
 export { tryValues } from './try-values.js';
+export { type Lifted, limitsNamed, type Pair, type WhatIf, type WhatIfOptions, whatIf } from './whatif.js';

@@ -8,12 +8,12 @@ import { build, penstock, ROOT, WAGTAIL } from './penstock.js';
 
 beforeAll(build, 120_000);
 
-const COMMANDS = ['run', 'roofline', 'describe', 'profile', 'synth', 'convert', 'audit', 'schema'];
+const COMMANDS = ['run', 'roofline', 'whatif', 'describe', 'profile', 'synth', 'convert', 'audit', 'schema'];
 const TRACE = join(ROOT, 'traces/wagtail-step.csv');
 
 /** What must be refused: the arguments, the exit code, and what the message must say. */
 const REFUSED: readonly (readonly [name: string, args: readonly string[], code: number, says: readonly string[]])[] = [
-  ['no arguments', [], 2, ['no command', 'run, roofline, sweep', 'penstock --help']],
+  ['no arguments', [], 2, ['no command', 'run, roofline, whatif, sweep', 'penstock --help']],
   ['an unknown command', ['rnu', TRACE], 2, ["no command 'rnu'", "did you mean 'run'?"]],
   ['an option in place of a command', ['--json', 'x'], 2, ['--json', 'a command first']],
   ['an unknown option', ['run', TRACE, '-p', WAGTAIL, '--sed', '4'], 2, ['no option --sed', 'did you mean --se']],

@@ -1,8 +1,7 @@
 /** `penstock whatif`: the same run with one limit lifted at a time, ranked by the time that would save. */
-import { availableParallelism } from 'node:os';
 import { InputError } from '../../errors.js';
 import { prettyJson, whatIfReport } from '../../report/index.js';
-import { LIMITS, whatIf } from '../../study/index.js';
+import { defaultWorkers, LIMITS, whatIf } from '../../study/index.js';
 import { OWN_SHAPE } from '../../trace/index.js';
 import { command, PACKAGE, SET, wholeNumber } from '../command.js';
 import { CHECKS_FAILED } from '../failure.js';
@@ -37,7 +36,7 @@ export const whatif = command({
     workers: {
       type: 'string',
       requiresArg: true,
-      default: String(availableParallelism()),
+      default: String(defaultWorkers()),
       defaultDescription: 'as many as cores',
       describe: 'runs side by side; the figures do not depend on it',
     },
@@ -58,32 +57,28 @@ export const whatif = command({
     const workers = wholeNumber('--workers', args.workers, 1);
     const { shape, clock } = shapeOf(args);
     const cyclePs = parseClock(clock);
-    const point = {
-      packageFile: args.package,
+    const job = {
+      package: args.package,
       overrides: args.set,
-      traceFile: args.trace,
-      trace: {
+      trace: args.trace,
+      traceOptions: {
         skipBadRows: wholeNumber('--skip-bad-rows', args['skip-bad-rows'], 0),
         ...(shape === OWN_SHAPE ? {} : { shape }), // a copy in another thread is not the same any more
         ...(cyclePs === undefined ? {} : { cyclePs }),
       },
-      replay: args.replay as 'closed' | 'open' | 'paced',
-      seed: args.seed,
-      untilPs: Number.POSITIVE_INFINITY,
+      run: { replay: args.replay as 'closed' | 'open' | 'paced', seed: args.seed },
     };
     const only = args.limits.split(',').flatMap((key) => (key.trim() === '' ? [] : [key.trim()]));
     const live = process.stderr.isTTY === true;
     let runs = 0;
-    const found = await whatIf(point, {
+    const found = await whatIf(job, {
       workers,
       signal: session.signal,
       pairs: args.pairs,
       only,
-      onPlan: (count, aboutMs) => {
+      onPlan: (count, threads, aboutMs) => {
         runs = count;
-        session.warn(
-          `penstock: ${count} more runs, ${Math.min(workers, count)} side by side, about ${duration(aboutMs)}`,
-        );
+        session.warn(`penstock: ${count} more runs, ${threads} side by side, about ${duration(aboutMs)}`);
       },
       onRun: (done) => {
         if (live) process.stderr.write(done < runs ? `\r${done} of ${runs} done` : '\r\u001b[K');
