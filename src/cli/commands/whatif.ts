@@ -44,10 +44,7 @@ export const whatif = command({
   },
   examples: [
     ['whatif traces/wagtail-step.csv -p configs/wagtail.yaml', 'what would help the demo most'],
-    [
-      'whatif traces/wagtail-step.csv -p configs/wagtail.yaml --limits refresh,window,buffering --pairs',
-      'and together',
-    ],
+    ['whatif traces/wagtail-step.csv -p configs/wagtail.yaml --limits window,credits --pairs', 'and together'],
   ],
   main: async (args, session) => {
     if (args.trace === '-') {
