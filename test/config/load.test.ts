@@ -20,7 +20,10 @@ const write = (name: string, text: string): string => {
 };
 
 describe('shipped packages', () => {
-  it.each(readdirSync(CONFIGS).filter((name) => name.endsWith('.yaml')))('%s loads', (name) => {
+  // sweep plans stand beside the packages they are about, and say by their first key what they are
+  const isPlan = (name: string): boolean => /^penstock_sweep:/m.test(readFileSync(join(CONFIGS, name), 'utf8'));
+  const packages = readdirSync(CONFIGS).filter((name) => name.endsWith('.yaml') && !isPlan(name));
+  it.each(packages)('%s loads', (name) => {
     const pkg = loadPackage(join(CONFIGS, name));
     for (const timing of TIMING_NAMES) expect(pkg.memory[0].timings[timing].source).not.toBe('');
   });

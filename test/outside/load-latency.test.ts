@@ -9,7 +9,7 @@ import { smallPackage } from '../helpers/packages.js';
  *
  * This compares a shape, not a device: the package here is one stack of HBM2 behind one link, without caches, fabric or ECC, and T
  * is measured the same way, from requests in flight and bandwidth.
- * Criterion, chosen beforehand: T rises with every step of load; it stays under 1.5 floors up to 55 % of peak, and is over 1.5
+ * Criterion, in part set after first runs were seen: T rises with every step of load; it stays under 1.5 floors up to 55 % of peak, and is over 1.5
  * from 90 % on, as on the card. (Found: 1.12, 1.24, 1.65, 2.3, 3.0 at 30, 54, 81, 87, 90.5 %.)
  * The traffic was chosen for it, since the shape depends on it: 64 B at random end at two thirds of peak, and engines that begin
  * long pieces in step queue at one channel from the start.

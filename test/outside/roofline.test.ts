@@ -7,7 +7,7 @@ import { smallPackage } from '../helpers/packages.js';
  * ridge, peak / bandwidth. Measured rooflines have a soft knee: an A100 at its ridge delivers 84 % of its peak (published
  * results of RRZE-HPC's gpu-benches), so there both bounds are missed.
  *
- * Tolerances, chosen beforehand: compute within 2 % of its peak from eight times the ridge on, where all that is lost is the load
+ * Tolerances, some set after first runs were seen: compute within 2 % of its peak from eight times the ridge on, where all that is lost is the load
  * of the first tile; bandwidth within 5 %, as for every ceiling of a schedule; neither is ever exceeded.
  * The knee's depth is no published figure of this package: at the ridge both are missed by 10 % at least, a little less than the
  * card's 16 %, and more than half of both is reached, which is what loading and computing in turn would give.
